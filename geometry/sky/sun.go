@@ -1,0 +1,58 @@
+package sky
+
+import (
+	"math"
+	"time"
+
+	"github.com/golang/geo/r3"
+	"github.com/golang/geo/s1"
+)
+
+// Rates of change in the horizon frame, rad a second: no direction moves
+// faster.
+const (
+	// SkyRate bounds a fixed ICRS direction: the sidereal turn of 15.0411
+	// arcsec a second, 1.0001 of it by aberration, and the changes of
+	// aberration, nutation and deflection (under 0.001).
+	SkyRate = 15.05 * arcsec
+	// SunRate bounds the Sun: the turn, its own motion (0.0425) and its
+	// parallax.
+	SunRate = 15.1 * arcsec
+)
+
+// SunError bounds the error of the Sun's direction, UT1 apart.
+const SunError = s1.Angle(0.02 * math.Pi / 180)
+
+// Sun is At(at).Sun(), without the work for the stars.
+func (n *Night) Sun(at time.Time) r3.Vector {
+	t, ok := n.since(at)
+	if !ok {
+		return nowhere()
+	}
+	d := n.frame(t)
+	s := d.turn(n.sun.Add(n.sunRate.Mul(t))).Sub(n.place)
+	return scaled(s, s.Norm2())
+}
+
+// OfDate is At(at).OfDate(dir), without the work for the stars.
+func (n *Night) OfDate(dir r3.Vector, at time.Time) r3.Vector {
+	t, ok := n.since(at)
+	if !ok {
+		return nowhere()
+	}
+	d := n.frame(t)
+	return unitLength(d.turn(dir))
+}
+
+// SiderealTime returns the local apparent sidereal time in [0, 2π).
+func (n *Night) SiderealTime(at time.Time) s1.Angle {
+	t, ok := n.since(at)
+	if !ok {
+		return s1.Angle(math.NaN())
+	}
+	a := math.Mod(n.turned+n.turnedRate*t, 2*math.Pi)
+	if a < 0 {
+		a += 2 * math.Pi
+	}
+	return s1.Angle(a)
+}
