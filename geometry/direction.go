@@ -26,7 +26,7 @@ func ToHorizon(v r3.Vector) (az, el s1.Angle) {
 	if a >= 2*math.Pi { // a tiny negative angle rounds up to a full turn
 		a = 0
 	}
-	return s1.Angle(a), s1.Angle(math.Atan2(v.Z, math.Hypot(v.X, v.Y)))
+	return s1.Angle(a), Elevation(v)
 }
 
 // FromEquator returns the unit vector at right ascension ra and declination
@@ -54,4 +54,10 @@ func ToEquator(v r3.Vector) (ra, dec s1.Angle) {
 // in gives NaN out.
 func Separation(a, b r3.Vector) s1.Angle {
 	return s1.Angle(math.Atan2(a.Cross(b).Norm(), a.Dot(b)))
+}
+
+// Elevation returns the elevation of v (X east, Y north, Z up), which need not
+// be a unit vector. NaN in gives NaN out.
+func Elevation(v r3.Vector) s1.Angle {
+	return s1.Angle(math.Atan2(v.Z, math.Hypot(v.X, v.Y)))
 }
