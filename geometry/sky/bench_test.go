@@ -66,12 +66,29 @@ func BenchmarkSun(b *testing.B) {
 	}
 }
 
-// BenchmarkPrepare has no budget: it happens once in 12 h for a site.
+// BenchmarkPrepare has no budget, since it happens once in 12 h for a site. It
+// is what each direction would cost without a prepared night.
 func BenchmarkPrepare(b *testing.B) {
 	site, at := earth.Position{Lat: deg(-31.5), Lon: deg(-4)}, utc("2031-02-14T03:00:00Z")
 	for b.Loop() {
 		if _, err := Prepare(site, at, UT1{}); err != nil {
 			b.Fatal(err)
 		}
+	}
+}
+
+// BenchmarkRefract has no budget of its own; the directions lie above 20
+// degrees, where beams go.
+func BenchmarkRefract(b *testing.B) {
+	r := Atmosphere{PressureHPa: 760, TemperatureC: 4, Known: true}.Over(2450)
+	v := make([]r3.Vector, 1024)
+	for i := range v {
+		v[i] = geometry.FromHorizon(deg(float64(i)), deg(20+float64(i%70)))
+	}
+	b.ReportAllocs()
+	i := 0
+	for b.Loop() {
+		sink, _ = r.Refract(v[i&1023])
+		i++
 	}
 }

@@ -30,7 +30,7 @@ const (
 	astronomicalUnit = 149597870700.0 // m
 	turnRate         = 7.292115855e-5 // of the Earth against the stars, rad/s
 	solarDeflection  = 1.974125743e-8 // twice the Sun's gravitational radius in au
-	leastDeflector   = 1e-6           // 1-cos of 0.08 degree: inside the Sun's disc
+	leastDeflector   = 1.08e-5        // 1-cos of the Sun's radius, 0.267 degree
 )
 
 // Night is the sky over a site in one bin of time. It is immutable and safe
@@ -40,9 +40,10 @@ type Night struct {
 	mid  time.Time // middle of the bin
 	bin  span.Span
 
-	toDate, toDateRate     rotation // ICRS to true equator and equinox of date, at mid; its change a second
-	velocity, velocityRate r3.Vector
-	sun, sunRate           r3.Vector // of date, geocentric
+	toDate                 rotation  // ICRS to true equator and equinox of date, at mid
+	spin                   r3.Vector // turn of that frame, rad/s: a direction p of date moves by spin × p
+	velocity, velocityRate r3.Vector // of the Earth in units of light's, of date; its change a second
+	sun, sunRate           r3.Vector // geocentric, of date; its change a second
 	turned, turnedRate     float64   // local apparent sidereal time at mid, rad; rad/s
 
 	sinLat, cosLat float64
@@ -80,7 +81,7 @@ func Prepare(site earth.Position, at time.Time, ut1 UT1) (*Night, error) {
 	jd := julianDay(n.mid)
 	jde := jd + ttMinusUTC.Hours()/24
 	before, now, after := slowAt(jde-reach.Hours()/24), slowAt(jde), slowAt(jde+reach.Hours()/24)
-	n.toDate, n.toDateRate = now.toDate, after.toDate.plus(-1, before.toDate).times(1/(2*half))
+	n.toDate, n.spin = now.toDate, spinBetween(before.toDate, now.toDate, after.toDate).Mul(1/(2*half))
 	n.velocity, n.velocityRate = now.velocity, after.velocity.Sub(before.velocity).Mul(1/(2*half))
 	n.sun, n.sunRate = now.sun, after.sun.Sub(before.sun).Mul(1/(2*half))
 	n.turned = sidereal.Mean(jd).Rad() + angleOf(offset).Radians() + now.equinoxes + site.Lon.Radians()
@@ -96,12 +97,15 @@ func Prepare(site earth.Position, at time.Time, ut1 UT1) (*Night, error) {
 // Covers returns the span in which the night answers: its bin and 12 h on
 // either side.
 func (n *Night) Covers() span.Span {
+	if n == nil || n.bin.Empty() {
+		return span.Span{}
+	}
 	return span.Span{From: n.bin.From.Add(-beyond), Until: n.bin.Until.Add(beyond)}
 }
 
 // Error bounds the error of a direction turned by Horizon or ICRS: the model,
 // polar motion, and 15 arcsec for each second that UT1-UTC is uncertain. It
-// holds for catalogue positions as given, and along the WGS 84 normal: the
+// holds outside the Sun's disc, for catalogue positions as given, and along the WGS 84 normal: the
 // plumb line may lean from it by some 10 arcsec, at steep mountains 60.
 func (n *Night) Error() s1.Angle {
 	if n == nil || n.within == 0 {

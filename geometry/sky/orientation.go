@@ -56,11 +56,11 @@ func (n *Night) At(at time.Time) Orientation {
 		return Orientation{}
 	}
 	o := Orientation{date: n.frame(t), place: n.place}
-	stars := n.toDate.plus(t, n.toDateRate)
+	stars := n.toDate.spun(n.spin.Mul(t))
 	o.stars = o.date.turnRows(&stars)
-	o.shift = o.stars.turn(n.velocity.Add(n.velocityRate.Mul(t)))
+	o.shift = o.date.turn(n.velocity.Add(n.velocityRate.Mul(t)))
 	o.shift.X += n.diurnal
-	o.sun = o.date.turn(n.sun.Add(n.sunRate.Mul(t)))
+	o.sun = o.date.turn(n.sunAt(t))
 	return o
 }
 
@@ -82,12 +82,7 @@ func (n *Night) frame(t float64) dateFrame {
 // the horizon frame, a unit vector. What is not of unit length gives NaN.
 func (o *Orientation) Horizon(icrs r3.Vector) r3.Vector {
 	h := o.stars.turn(icrs)
-	// Light deflection (the part along h does not turn it), then aberration.
-	w := solarDeflection / math.Max(1-o.sun.Dot(h), leastDeflector)
-	h.X += o.shift.X - w*o.sun.X
-	h.Y += o.shift.Y - w*o.sun.Y
-	h.Z += o.shift.Z - w*o.sun.Z
-	return unitLength(h)
+	return unitLength(h.Add(o.shift).Sub(o.sun.Mul(deflection(o.sun.Dot(h)))))
 }
 
 // ICRS is the inverse of Horizon, to 1e-11 rad.
@@ -97,8 +92,7 @@ func (o *Orientation) ICRS(enu r3.Vector) r3.Vector {
 	}
 	h := enu
 	for range 3 { // the deflection at the star, from its own direction
-		w := solarDeflection / math.Max(1-o.sun.Dot(h), leastDeflector)
-		c := o.shift.Sub(o.sun.Mul(w))
+		c := o.shift.Sub(o.sun.Mul(deflection(o.sun.Dot(h))))
 		along := enu.Dot(c)
 		h = enu.Mul(along + math.Sqrt(1-c.Norm2()+along*along)).Sub(c)
 	}
@@ -119,16 +113,58 @@ func (o *Orientation) Sun() r3.Vector {
 	return scaled(s, s.Norm2())
 }
 
-// Horizon is At(at).Horizon(icrs).
+// Horizon is At(at).Horizon(icrs), quicker for one direction: what turns a
+// frame there turns only the direction here.
 func (n *Night) Horizon(icrs r3.Vector, at time.Time) r3.Vector {
-	o := n.At(at)
-	return o.Horizon(icrs)
+	t, ok := n.since(at)
+	if !ok {
+		return nowhere()
+	}
+	p := n.toDate.turn(icrs)
+	p = p.Add(n.spin.Cross(p).Mul(t))
+	sun := n.sunAt(t)
+	p = p.Add(n.velocity).Add(n.velocityRate.Mul(t)).Sub(sun.Mul(deflection(sun.Dot(p))))
+	d := n.frame(t)
+	h := d.turn(p)
+	h.X += n.diurnal
+	return unitLength(h)
+}
+
+// OfDate is At(at).OfDate(dir), without the work for the stars.
+func (n *Night) OfDate(dir r3.Vector, at time.Time) r3.Vector {
+	t, ok := n.since(at)
+	if !ok {
+		return nowhere()
+	}
+	d := n.frame(t)
+	return unitLength(d.turn(dir))
+}
+
+// ToDate is At(at).ToDate(enu), without the work for the stars.
+func (n *Night) ToDate(enu r3.Vector, at time.Time) r3.Vector {
+	t, ok := n.since(at)
+	if !ok {
+		return nowhere()
+	}
+	d := n.frame(t)
+	return unitLength(d.back(enu))
 }
 
 // ICRS is At(at).ICRS(enu).
 func (n *Night) ICRS(enu r3.Vector, at time.Time) r3.Vector {
 	o := n.At(at)
 	return o.ICRS(enu)
+}
+
+// deflection returns how far light is bent away from the Sun, as the length of
+// a vector from the Sun to add to a direction: the part along the direction
+// only lengthens it, by 0.002 at most. Within the Sun's disc the length is held.
+func deflection(cosFromSun float64) float64 {
+	away := 1 - cosFromSun
+	if !(away > leastDeflector) {
+		away = leastDeflector
+	}
+	return solarDeflection / away
 }
 
 // unitLength returns v at unit length, or NaN where it is not nearly of unit length

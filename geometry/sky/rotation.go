@@ -27,8 +27,25 @@ func (r rotation) after(b rotation) rotation {
 	return rotation{b.back(r.x), b.back(r.y), b.back(r.z)}
 }
 
-func (r rotation) plus(f float64, b rotation) rotation {
-	return rotation{r.x.Add(b.x.Mul(f)), r.y.Add(b.y.Mul(f)), r.z.Add(b.z.Mul(f))}
+// spun returns the rotation followed by the small turn w, which moves a vector
+// p by w × p; exact to the square of w.
+func (r *rotation) spun(w r3.Vector) rotation {
+	return rotation{
+		x: r.x.Add(r.z.Mul(w.Y)).Sub(r.y.Mul(w.Z)),
+		y: r.y.Add(r.x.Mul(w.Z)).Sub(r.z.Mul(w.X)),
+		z: r.z.Add(r.y.Mul(w.X)).Sub(r.x.Mul(w.Y)),
+	}
+}
+
+// spinBetween returns the small turn from a to b, seen in the frame of mid:
+// the skew part of (b-a) after the inverse of mid.
+func spinBetween(a, mid, b rotation) r3.Vector {
+	dx, dy, dz := b.x.Sub(a.x), b.y.Sub(a.y), b.z.Sub(a.z)
+	return r3.Vector{
+		X: dz.Dot(mid.y) - dy.Dot(mid.z),
+		Y: dx.Dot(mid.z) - dz.Dot(mid.x),
+		Z: dy.Dot(mid.x) - dx.Dot(mid.y),
+	}.Mul(0.5)
 }
 
 // aboutX turns the frame by a about X: the components of a fixed vector in
@@ -42,8 +59,4 @@ func aboutX(a float64) rotation {
 func aboutZ(a float64) rotation {
 	s, c := math.Sincos(a)
 	return rotation{r3.Vector{X: c, Y: s}, r3.Vector{X: -s, Y: c}, r3.Vector{Z: 1}}
-}
-
-func (r rotation) times(f float64) rotation {
-	return rotation{r.x.Mul(f), r.y.Mul(f), r.z.Mul(f)}
 }

@@ -17,7 +17,7 @@ import (
 type slow struct {
 	toDate    rotation  // ICRS to true equator and equinox of date
 	equinoxes float64   // equation of the equinoxes, rad
-	velocity  r3.Vector // Earth's barycentric velocity in units of light's, ICRS
+	velocity  r3.Vector // Earth's barycentric velocity in units of light's, of date
 	sun       r3.Vector // geocentric apparent direction of the Sun, of date
 }
 
@@ -26,16 +26,17 @@ func slowAt(jde float64) slow {
 	t := base.J2000Century(jde)
 	dpsi, deps := nutation.Nutation(jde)
 	// The precession rates of IAU 2000 against IAU 1976 (IERS Conventions
-	// 2003, eq. 5.30), small enough to go with the nutation.
+	// 2003, ch. 5; eraPr00), small enough to go with the nutation.
 	psi := dpsi.Rad() - 0.29965*arcsec*t
 	eps := deps.Rad() - 0.02524*arcsec*t
 	mean := nutation.MeanObliquity(jde).Rad()
 
 	nutate := aboutX(-(mean + eps)).after(aboutZ(-psi)).after(aboutX(mean))
+	toDate := nutate.after(precession(jde)).after(bias())
 	return slow{
-		toDate:    nutate.after(precession(jde)).after(bias()),
-		equinoxes: psi*math.Cos(mean+eps) + 0.014506*arcsec, // the ICRS origin of right ascension: IERS Conventions 2003, eq. 5.36
-		velocity:  velocity(jde),
+		toDate:    toDate,
+		equinoxes: psi*math.Cos(mean+eps) + 0.014506*arcsec, // the IAU 2000 sidereal time at J2000.0 less that of 1982 (eraGmst00)
+		velocity:  toDate.turn(velocity(jde)),
 		sun:       sunOfDate(t, psi, mean+eps),
 	}
 }
@@ -62,10 +63,10 @@ func precession(jde float64) rotation {
 }
 
 // bias is the rotation from ICRS to the mean equator and equinox of J2000.0
-// (IERS Conventions 2003, eq. 5.25 and 5.30): 0.02 arcsec in all.
+// (IERS Conventions 2003, ch. 5; eraBi00): 0.02 arcsec in all.
 func bias() rotation {
 	const (
-		xi    = -0.041775 * 0.39777716 * arcsec // longitude times sin of the obliquity
+		xi    = -0.041775 * 0.39777716 * arcsec // in longitude, times the sine of the obliquity
 		eta   = -0.0068192 * arcsec
 		alpha = -0.0146 * arcsec
 	)

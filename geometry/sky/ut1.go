@@ -2,6 +2,7 @@ package sky
 
 import (
 	"fmt"
+	"math"
 	"time"
 
 	"beamward/geometry"
@@ -9,7 +10,9 @@ import (
 	"github.com/golang/geo/s1"
 )
 
-// MaxUT1Offset bounds |UT1-UTC| while leap seconds are kept (ITU-R TF.460-6).
+// MaxUT1Offset bounds |UT1-UTC| while leap seconds are kept as they are
+// (ITU-R TF.460-6). The CGPM means to give that up by 2035 (resolution 4 of
+// 2022); from then on a site must state UT1-UTC.
 const MaxUT1Offset = 900 * time.Millisecond
 
 // knownWithin is how far a stated UT1-UTC may be off until its end: the figure
@@ -49,7 +52,7 @@ func angleOf(d time.Duration) s1.Angle {
 const (
 	// siderealRate is the turning of the Earth against the equinox in rad a
 	// second of UT1 (Meeus ch. 12).
-	siderealRate = 1.00273790935 * 2 * 3.14159265358979323846 / 86400
+	siderealRate = 1.00273790935 * 2 * math.Pi / 86400
 
 	arcsec = float64(geometry.Arcsecond)
 )

@@ -74,9 +74,7 @@ func utc(s string) time.Time {
 	return at
 }
 
-func deg(v float64) s1.Angle { return s1.Angle(v) * s1.Degree }
-
-// seconds returns a time.Duration without loss at 1 ns.
+// seconds returns a duration without loss at 1 ns.
 func seconds(s float64) time.Duration { return time.Duration(math.Round(s * 1e9)) }
 
 func prepared(t testing.TB, site earth.Position, at time.Time, ut1 UT1) *Night {
@@ -147,6 +145,27 @@ func TestERFA(t *testing.T) {
 		}
 		t.Logf("prepared %v: %d rows, max %.4f, rms %.4f arcsec; back to ICRS %.1e rad", shift, all.n, all.max, all.rms(), back)
 	}
+}
+
+// TestERFAObserved is eraAtco13's own test (t_erfa_c.c of ERFA 2.0.0): a star
+// with proper motion, at 9 degrees through air of 731 hPa and 12.8 °C. Left out
+// here are polar motion (0.38 arcsec) and parallax (0.1 arcsec); the rest is the
+// refraction's stated error.
+func TestERFAObserved(t *testing.T) {
+	const dec = 0.174
+	site := earth.Position{Lat: -1.2345856, Lon: -0.527800806, Height: 2738}
+	at := time.Date(2013, time.April, 2, 12, 0, 0, 0, time.UTC).Add(seconds((0.469254051) * 86400))
+	n := prepared(t, site, at, known(seconds(0.1550675)))
+	star := ProperMotion{RA: 1e-5 * math.Cos(dec), Dec: 5e-6}.At(geometry.FromEquator(2.71, dec), at)
+	got, err := n.Refraction(Atmosphere{PressureHPa: 731, TemperatureC: 12.8, Known: true}).Refract(n.Horizon(star, at))
+	want := geometry.FromHorizon(0.9251774485485515207e-1, math.Pi/2-1.407661405256499357)
+	off := geometry.Separation(got, want)
+	t.Logf("%.3f arcsec off, stated %.1f", off.Radians()/arcsec, (err+n.Error()).Radians()/arcsec)
+	if !(off.Radians() <= 4*arcsec && off <= err+n.Error()) {
+		t.Errorf("%v off", off)
+	}
+	az, _ := geometry.ToHorizon(got)
+	nearAngle(t, "azimuth", az, 0.9251774485485515207e-1, 0.5)
 }
 
 // TestSun compares with astropy 5.2.1 (airless topocentric), 72 rows; 0.02
