@@ -21,9 +21,9 @@ const (
 
 	ttMinusUTC = 69184 * time.Millisecond // 32.184 s and TAI-UTC, taken as 37 s
 
-	// modelError bounds the error of Horizon apart from UT1: 0.1 arcsec of the
-	// model against ERFA (2020-2035, 12 h from the bin) and 0.6 arcsec of polar
-	// motion, which is not applied.
+	// modelError bounds the error of Horizon apart from UT1: 0.6 arcsec of polar
+	// motion, which is not applied, and 0.15 for the model, whose largest error
+	// against ERFA is 0.013 (2020-2035, 18 h from the bin's middle).
 	modelError = 0.75 * geometry.Arcsecond
 
 	lightSpeed       = 299792458.0    // m/s
@@ -105,8 +105,9 @@ func (n *Night) Covers() span.Span {
 
 // Error bounds the error of a direction turned by Horizon or ICRS: the model,
 // polar motion, and 15 arcsec for each second that UT1-UTC is uncertain. It
-// holds outside the Sun's disc, for catalogue positions as given, and along the WGS 84 normal: the
-// plumb line may lean from it by some 10 arcsec, at steep mountains 60.
+// holds outside the Sun's disc, for catalogue positions as given, and against
+// the WGS 84 normal: the plumb line may lean from that by some 10 arcsec, near
+// steep mountains by 60 (common practice, no source).
 func (n *Night) Error() s1.Angle {
 	if n == nil || n.within == 0 {
 		return s1.Angle(math.Pi)

@@ -167,14 +167,13 @@ func deflection(cosFromSun float64) float64 {
 	return solarDeflection / away
 }
 
-// unitLength returns v at unit length, or NaN where it is not nearly of unit length
-// already: a direction that was none does not become one.
+// unitLength returns v at unit length, or NaN where it is not nearly of unit
+// length already: a direction that was none does not become one.
 func unitLength(v r3.Vector) r3.Vector {
-	n2 := v.Norm2()
-	if !(n2 > 0.98 && n2 < 1.02) {
+	if !isUnit(v) {
 		return nowhere()
 	}
-	return scaled(v, n2)
+	return scaled(v, v.Norm2())
 }
 
 func isUnit(v r3.Vector) bool {
