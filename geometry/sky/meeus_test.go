@@ -208,3 +208,48 @@ func TestVelocity(t *testing.T) {
 func TestCenturyIsMeeusOwn(t *testing.T) {
 	near(t, "T of example 25.a", base.J2000Century(2448908.5), -0.072183436, 1e-9)
 }
+
+// TestExample16aRefraction: apparent lower limb at 30 arcmin by Bennett's
+// formula, true upper limb by Saemundsson's; the improved formula is within
+// 0.07 and 0.13 arcmin of them.
+func TestExample16aRefraction(t *testing.T) {
+	r := air(1010, 10)
+	airless, _ := r.Airless(deg(0.5))
+	near(t, "lower limb", airless.Degrees()*60, 1.246, 0.07)
+	observed, _ := r.Observed(deg(33.246 / 60))
+	near(t, "upper limb", observed.Degrees()*60, 33.246+24.618, 0.13)
+}
+
+// TestExample17aSeparation: Arcturus and Spica, as given and turned overhead.
+func TestExample17aSeparation(t *testing.T) {
+	arcturus := geometry.FromEquator(hms(14, 15, 39.7), dms(19, 10, 57))
+	spica := geometry.FromEquator(hms(13, 25, 11.6), -dms(11, 9, 41))
+	nearAngle(t, "separation", geometry.Separation(arcturus, spica), dms(32, 47, 35), 0.5)
+	at := utc("2031-02-14T03:00:00Z")
+	n := prepared(t, earth.Position{Lat: deg(-31.5)}, at, UT1{})
+	nearAngle(t, "of date, overhead", geometry.Separation(n.OfDate(arcturus, at), n.OfDate(spica, at)), dms(32, 47, 35), 0.5)
+}
+
+// TestSiderealTimeElsewhere: JPL Horizons at longitude 0 (through skyfield,
+// which documents 51 mas between the frames), and eraGst06a with UT1-UTC of
+// -0.179285 s at the first of them; hours.
+func TestSiderealTimeElsewhere(t *testing.T) {
+	for day, want := range []float64{20.0336663100, 20.0993760470, 20.1650865109} {
+		at := utc("2020-11-27T15:34:00Z").AddDate(0, 0, day)
+		n := prepared(t, earth.Position{}, at, known(seconds(-0.179285)))
+		nearAngle(t, "Horizons", n.SiderealTime(at), deg(15*want), 0.15)
+		if day == 0 {
+			nearAngle(t, "eraGst06a", n.SiderealTime(at), deg(15*20.033667249), 0.02)
+		}
+	}
+}
+
+// TestNOVAS: a place of date to the horizon by NOVAS (skyfield's tests), with
+// TT taken for UT1; degrees.
+func TestNOVAS(t *testing.T) {
+	at := utc("1969-07-20T20:18:00Z")
+	n := prepared(t, earth.Position{Lat: deg(38.9215), Lon: deg(-77.0669), Height: 92}, at, known(0))
+	az, el := geometry.ToHorizon(n.OfDate(geometry.FromEquator(deg(15*12.34), deg(56.78)), at))
+	near(t, "elevation", el.Degrees(), 68.12871390985244, 1e-4)
+	near(t, "azimuth", az.Degrees(), 28.979244220884173, 2e-4)
+}
