@@ -67,10 +67,13 @@ func (a Atmosphere) plausible() bool {
 // Refraction is Over the night's site.
 func (n *Night) Refraction(a Atmosphere) Refraction { return a.Over(n.site.Height) }
 
-// RefractionStretch bounds what the air does to a rate: along an airless path
-// of length x the observed direction moves, and its stated error changes, by at
-// most RefractionStretch times x in sum.
-const RefractionStretch = 1.15
+// What the air does to a rate: along an airless path of length x the observed
+// direction moves at most x·RefractionStretch, and its stated error changes by
+// at most x·RefractionErrorSlope.
+const (
+	RefractionStretch    = 1.03
+	RefractionErrorSlope = 0.2
+)
 
 // Refract is a.Anywhere().Refract(airless).
 func Refract(airless r3.Vector, a Atmosphere) (observed r3.Vector, err s1.Angle) {
