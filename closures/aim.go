@@ -87,15 +87,6 @@ func unit(v r3.Vector) bool {
 	return n > 1-1e-9 && n < 1+1e-9
 }
 
-// Extent returns the span over which a table holds; ok is false for aims that
-// hold at any time.
-func (a *Aim) extent() (from, until time.Time, ok bool) {
-	if a.Frame != Table || len(a.Points) == 0 {
-		return time.Time{}, time.Time{}, false
-	}
-	return a.Points[0].At, a.Points[len(a.Points)-1].At, true
-}
-
 // segment returns the index of the table's segment that holds t.
 func (a *Aim) segment(t time.Time) (int, bool) {
 	if len(a.Points) < 2 || t.Before(a.Points[0].At) || t.After(a.Points[len(a.Points)-1].At) {

@@ -4,6 +4,7 @@ import (
 	"math"
 	"time"
 
+	"beamward/geometry/encounter"
 	"beamward/geometry/span"
 )
 
@@ -58,7 +59,9 @@ type Finding struct {
 	Over    span.Span
 	Margin  Margin
 	Detail  string // fixed text only, never input
-	Ref     string // the authority's or a person's own reference, input: only ever shown as text
+	List    ListID // of a listed closure; input: only ever shown as text
+	Region  string // of a listed closure; likewise
+	Ref     string // the authority's or a person's own reference; likewise
 }
 
 // Answer is what one check said. Unset it is Unknown, which shutters as a
@@ -75,8 +78,10 @@ type Sheet struct {
 	Found    []Finding
 	Cautions []Caution
 
-	hits  []RegionHit
-	spans [4]span.Set
+	coming  []Finding // of the foreseeable checks, not yet
+	hits    []int32
+	scratch [6]span.Set
+	volumes []encounter.Volume
 }
 
 // Reset empties the sheet and keeps its memory.
