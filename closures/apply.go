@@ -191,12 +191,12 @@ func (s *State) applyNight(b NightReady, at time.Time) {
 	if b.Night == nil {
 		return
 	}
-	bin := binOf(b.Night)
+	bin := BinOf(b.Night)
 	s.nights = slices.DeleteFunc(slices.Clone(s.nights), func(n *sky.Night) bool {
-		return binOf(n) == bin || binOf(n).Until.Add(24*time.Hour).Before(at)
+		return BinOf(n) == bin || BinOf(n).Until.Add(24*time.Hour).Before(at)
 	})
 	s.nights = append(s.nights, b.Night)
-	slices.SortFunc(s.nights, func(a, o *sky.Night) int { return binOf(a).From.Compare(binOf(o).From) })
+	slices.SortFunc(s.nights, func(a, o *sky.Night) int { return BinOf(a).From.Compare(BinOf(o).From) })
 	if n := len(s.nights); n > keepNights {
 		s.nights = s.nights[n-keepNights:]
 	}

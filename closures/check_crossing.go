@@ -133,22 +133,31 @@ func (f *Foreseen) pair(q *Question, n *NeighbourRules, p *Pointing, l *Launch) 
 // seeing is the least half angle to which the air widens a beam: 1 arcsec.
 const seeing = float64(geometry.Arcsecond)
 
-// low is the elevation of a telescope's axis under which the air may bend what
-// it sees by more than bending.
-const low = 5 * s1.Degree
+// Near the horizon the air bends what a telescope sees by up to 35 arcmin, 25
+// more than bending. The whole is allowed for up to an elevation of 5°, and it
+// fades to nothing at 10° so that the margin has no step.
+const (
+	lowLift  = 25.0 / 60 * math.Pi / 180
+	lowFull  = 5 * math.Pi / 180
+	lowFades = 5 * math.Pi / 180 // above lowFull
+)
+
+// liftNear returns what is allowed for an axis near the horizon, and its slope
+// bound against the elevation.
+func liftNear(axis r3.Vector) (lift, slope float64) {
+	el := math.Atan2(axis.Z, math.Hypot(axis.X, axis.Y))
+	return lowLift * min(1, max(0, 1-(el-lowFull)/lowFades)), lowLift / lowFades
+}
 
 func (f *Foreseen) crossPair(q *Question, n *NeighbourRules, p *Pointing, pair *crossing.Pair, sh *Sheet, least *Margin) {
 	beam, _ := q.overhead()
 	theirs := Question{Beam: q.Beam, Aim: p.Aim}
-	axis, _ := theirs.overhead()
+	axis, axisRate := theirs.overhead()
 	margin := func(night *sky.Night, at time.Time) (float64, float64) {
 		a := axis(night, at)
 		r := pair.Margin(beam(night, at), a)
-		if a.Z < math.Sin(low.Radians()) {
-			// Near the horizon the air lifts by up to 35 arcmin.
-			r.Margin -= (35.0/60 - 10.0/60) * math.Pi / 180
-		}
-		return r.Margin, r.Rate
+		lift, slope := liftNear(a)
+		return r.Margin - lift, r.Rate + slope*axisRate
 	}
 	found := Finding{Code: CodeFieldCrossing, Source: Source(n.ID), Verdict: Violated, Margin: Margin{Unit: Radian}, Detail: "the beam crosses the field of a neighbour telescope"}
 	sh.scratch[0] = q.searchRated(sh.scratch[0], q.Over, margin)

@@ -181,7 +181,7 @@ func (q *Question) band() (lo, hi, pad float64) {
 	d := declination(q.Aim.Direction)
 	if q.Aim.Frame == Horizon {
 		n := q.Nights[0]
-		d = declination(n.ICRS(q.Aim.Direction, binOf(n).From))
+		d = declination(n.ICRS(q.Aim.Direction, BinOf(n).From))
 	}
 	const frames = 0.02 // rad; over a degree
 	return d, d, pad + frames + math.Hypot(q.Aim.RateRA, q.Aim.RateDec)*q.farthest()*1.1

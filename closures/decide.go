@@ -127,7 +127,8 @@ func (s *State) look(b *beam, at time.Time, sh *Sheet) {
 	sh.Reset()
 	c := s.scene
 	c.At, c.Beam, c.Night = at, b, s.night(at)
-	over := span.Span{From: at, Until: at.Add(Foresight)}
+	// What ended no longer ago than the clock may be wrong still closes.
+	over := span.Span{From: at.Add(-s.scene.clockError()), Until: at.Add(Foresight)}
 	if a := b.present(); a != nil {
 		q := Question{Beam: b.rules, Aim: a.aim, Over: over, Nights: s.nightsFor(over), Edge: EdgeDecide, Now: at, AimBegan: a.began}
 		if b.hits.serves(b.rules, a.aim, b.hits0) {
@@ -135,7 +136,7 @@ func (s *State) look(b *beam, at time.Time, sh *Sheet) {
 		}
 		s.scene.Look(&q, sh)
 	} else {
-		s.lookAimless(b, over, sh)
+		s.lookAimless(b, over, at, sh)
 	}
 	for _, check := range live() {
 		check.Now(&c, sh)
@@ -146,9 +147,9 @@ func (s *State) look(b *beam, at time.Time, sh *Sheet) {
 // lookAimless answers the foreseeable checks where no aim is known: those that
 // need none as ever, the others as unknown. That the aim is not known is a
 // reason of its own.
-func (s *State) lookAimless(b *beam, over span.Span, sh *Sheet) {
+func (s *State) lookAimless(b *beam, over span.Span, at time.Time, sh *Sheet) {
 	nowhere := Aim{}
-	q := Question{Beam: b.rules, Aim: &nowhere, Over: over, Nights: s.nightsFor(over), Edge: EdgeDecide, Now: over.From}
+	q := Question{Beam: b.rules, Aim: &nowhere, Over: over, Nights: s.nightsFor(over), Edge: EdgeDecide, Now: at}
 	for _, check := range foreseeable() {
 		switch check.(type) {
 		case notCovered, daylight, held:

@@ -27,16 +27,17 @@ type Question struct {
 }
 
 // The placing of edges. A plan's closures hold those of a decision for the
-// same aim, because an edge found with EdgeDecide lies within EdgeDecide of an
-// instant whose margin is at most rate x EdgeDecide, and PlanSlack holds twice
-// that.
+// same aim: an edge found with EdgeDecide lies within EdgeDecide of an instant
+// whose margin is at most rate x EdgeDecide, so twice that would do where the
+// rate is one number. Where each margin states its own, a later one may be
+// larger than the one leapt with; PlanSlack leaves room for ten times as much.
 const (
-	EdgeDecide = 10 * time.Millisecond
+	EdgeDecide = time.Millisecond
 	EdgePlan   = 50 * time.Millisecond
-	PlanSlack  = 2 * EdgeDecide
+	PlanSlack  = 20 * EdgeDecide
 )
 
-// Error returns the hard bound of the aim's error: what it states and what
+// err returns the hard bound of the aim's error: what it states and what
 // the beam's rules add.
 func (q *Question) err() s1.Angle { return q.Aim.Error + q.Beam.Aim.Error }
 
@@ -61,7 +62,7 @@ func (q *Question) searchRated(dst span.Set, over span.Span, margin func(n *sky.
 		if n == nil {
 			next := over.Until
 			for _, o := range q.Nights {
-				if from := binOf(o).From; from.After(at) && from.Before(next) {
+				if from := BinOf(o).From; from.After(at) && from.Before(next) {
 					next = from
 				}
 			}
@@ -69,7 +70,7 @@ func (q *Question) searchRated(dst span.Set, over span.Span, margin func(n *sky.
 			at = next
 			continue
 		}
-		part := span.Span{From: at, Until: over.Until}.Intersect(binOf(n))
+		part := span.Span{From: at, Until: over.Until}.Intersect(BinOf(n))
 		dst = span.AppendBelowRated(dst, func(t time.Time) (float64, float64) {
 			m, rate := margin(n, t)
 			return m - rate*slack, rate
@@ -93,8 +94,8 @@ func appendSpan(dst span.Set, s span.Span) span.Set {
 	return append(dst, s)
 }
 
-// binOf returns the 12 h bin that n was prepared for.
-func binOf(n *sky.Night) span.Span {
+// BinOf returns the 12 h bin that a night was prepared for.
+func BinOf(n *sky.Night) span.Span {
 	c := n.Covers()
 	return sky.Bin(c.From.Add(c.Until.Sub(c.From) / 2))
 }
@@ -102,7 +103,7 @@ func binOf(n *sky.Night) span.Span {
 // nightAt returns the night whose bin holds at, or nil.
 func nightAt(nights []*sky.Night, at time.Time) *sky.Night {
 	for _, n := range nights {
-		if n != nil && binOf(n).Contains(at) {
+		if n != nil && BinOf(n).Contains(at) {
 			return n
 		}
 	}
@@ -215,3 +216,10 @@ func (a *Aim) own(at time.Time) r3.Vector {
 func (a *Aim) drift() sky.Drift { return sky.Drift{RA: a.RateRA, Dec: a.RateDec, From: a.Reference} }
 
 func (a *Aim) motion() sky.ProperMotion { return sky.ProperMotion{RA: a.PMRA, Dec: a.PMDec} }
+
+// InSkyAt is InSky's direction alone; NaN where the aim does not reach.
+func (a *Aim) InSkyAt(n *sky.Night, at time.Time) r3.Vector {
+	q := Question{Aim: a}
+	f, _ := q.inSky()
+	return f(n, at)
+}

@@ -153,9 +153,9 @@ func (s *State) night(at time.Time) *sky.Night { return nightAt(s.nights, at) }
 // nightsFor returns the nights that touch a span.
 func (s *State) nightsFor(over span.Span) []*sky.Night {
 	for i, n := range s.nights {
-		if binOf(n).Overlaps(over) {
+		if BinOf(n).Overlaps(over) {
 			j := i
-			for j < len(s.nights) && binOf(s.nights[j]).Overlaps(over) {
+			for j < len(s.nights) && BinOf(s.nights[j]).Overlaps(over) {
 				j++
 			}
 			return s.nights[i:j]

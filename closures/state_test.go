@@ -85,14 +85,19 @@ func openList(t testing.TB) *List {
 
 func newWorld(t testing.TB, r *Rules, lists ...*List) *world {
 	t.Helper()
-	s, err := New(r, Boot{ID: "boot", At: evening}, Durable{})
+	return newWorldAt(t, r, evening, lists...)
+}
+
+func newWorldAt(t testing.TB, r *Rules, start time.Time, lists ...*List) *world {
+	t.Helper()
+	s, err := New(r, Boot{ID: "boot", At: start}, Durable{})
 	if err != nil {
 		t.Fatal(err)
 	}
-	w := &world{t: t, s: s, r: r, at: evening, dir: overheadICRS(t, r, evening, 150, 65)}
+	w := &world{t: t, s: s, r: r, at: start, dir: overheadICRS(t, r, start, 150, 65)}
 	var facts []Body
 	for _, d := range []time.Duration{0, 12 * time.Hour} {
-		n, err := sky.Prepare(r.Site.Position, evening.Add(d), r.Site.UT1)
+		n, err := sky.Prepare(r.Site.Position, start.Add(d), r.Site.UT1)
 		if err != nil {
 			t.Fatal(err)
 		}

@@ -1,0 +1,115 @@
+package plan
+
+import (
+	"slices"
+	"time"
+
+	"beamward/closures"
+	"beamward/geometry/sky"
+	"beamward/geometry/span"
+)
+
+// Planner answers for one beam over one span of time.
+type Planner struct {
+	foreseen *closures.Foreseen
+	beam     *closures.BeamRules
+	over     span.Span
+	near     span.Span // over, and as far beyond as a closure can reach in
+	nights   []*sky.Night
+}
+
+// MaxLength is the longest span that one plan answers for.
+const MaxLength = 14 * 24 * time.Hour
+
+// Prepare makes a planner for a beam over a span that nights cover. The error
+// is a *closures.Error.
+func Prepare(f *closures.Foreseen, beam closures.BeamID, over span.Span, nights []*sky.Night) (*Planner, error) {
+	b := f.Rules.Beam(beam)
+	if b == nil {
+		return nil, closures.Errorf(closures.NotFound, "name a configured beam", "plan: beam %.64q is not configured", beam)
+	}
+	if over.Empty() {
+		return nil, closures.Errorf(closures.Invalid, "until must be after from", "plan: the span is empty")
+	}
+	if over.Length() > MaxLength {
+		return nil, closures.Errorf(closures.Invalid, "plan at most 14 days at a time", "plan: the span is too long")
+	}
+	clockError := f.Rules.PlanClockError()
+	near := over.Widen(clockError, f.Rules.MarginTime(b)+clockError)
+	at := near.From
+	for at.Before(near.Until) {
+		i := slices.IndexFunc(nights, func(n *sky.Night) bool { return sky.Bin(at) == closures.BinOf(n) })
+		if i < 0 {
+			return nil, closures.Errorf(closures.Internal, "prepare every night of the span", "plan: the sky at %s is not prepared", at.Format(time.RFC3339))
+		}
+		at = sky.Bin(at).Until
+	}
+	return &Planner{foreseen: f, beam: b, over: over, near: near, nights: nights}, nil
+}
+
+// Nights prepares every night that a plan over a span needs, in order.
+func Nights(r *closures.Rules, over span.Span) ([]*sky.Night, error) {
+	var out []*sky.Night
+	near := over.Widen(aside, aside)
+	for at := sky.Bin(near.From).From; at.Before(near.Until); at = sky.Bin(at).Until {
+		n, err := sky.Prepare(r.Site.Position, at, r.Site.UT1)
+		if err != nil {
+			return nil, closures.Errorf(closures.Invalid, "choose a time within 1900 to 2100", "plan: the sky at %s cannot be prepared: %v", at.Format(time.RFC3339), err)
+		}
+		out = append(out, n)
+	}
+	return out, nil
+}
+
+// aside is more than any margin time and clock error.
+const aside = 2 * time.Minute
+
+// Allowed is what one target can have.
+type Allowed struct {
+	Spans    span.Set           // when nothing foreseeable stands against it
+	Blocked  []closures.Finding // every closure, each begun earlier by the margin time and widened by the clock's error, in order of time
+	Cautions []closures.Caution
+	LeftOut  closures.Codes // what only a decision can tell
+}
+
+// Share returns which part of the span is allowed.
+func (a *Allowed) Share(over span.Span) float64 {
+	if over.Length() == 0 {
+		return 0
+	}
+	return float64(a.Spans.Total()) / float64(over.Length())
+}
+
+// Scratch is one caller's memory, used again for each target.
+type Scratch struct{ sheet closures.Sheet }
+
+// One returns when the aim is allowed. An aim that is not valid is refused.
+// What is returned is the caller's own.
+func (p *Planner) One(a *closures.Aim, scratch *Scratch) (Allowed, error) {
+	if !a.Valid() {
+		return Allowed{}, closures.Errorf(closures.Invalid, "give a whole aim with finite numbers", "plan: the aim cannot be used")
+	}
+	q := closures.Question{
+		Beam: p.beam, Aim: a, Over: p.near, Nights: p.nights,
+		Edge: closures.EdgePlan, Slack: closures.PlanSlack, Hits: closures.MakeHits(p.foreseen, p.beam, a),
+	}
+	sh := &scratch.sheet
+	sh.Reset()
+	p.foreseen.Look(&q, sh)
+	clockError := p.foreseen.Rules.PlanClockError()
+	closed := p.foreseen.Closed(&q, sh, clockError)
+	out := Allowed{
+		Spans:    closed.Within(p.over).Complement(p.over),
+		Cautions: slices.Clone(sh.Cautions),
+		LeftOut:  closures.AllCodes &^ closures.ForeseeableCodes(),
+	}
+	margin := p.foreseen.Rules.MarginTime(p.beam)
+	for _, f := range sh.Found {
+		f.Over = f.Over.Widen(margin+clockError, clockError).Intersect(p.over)
+		if !f.Over.Empty() {
+			out.Blocked = append(out.Blocked, f)
+		}
+	}
+	slices.SortStableFunc(out.Blocked, func(x, y closures.Finding) int { return x.Over.From.Compare(y.Over.From) })
+	return out, nil
+}
