@@ -69,6 +69,10 @@ func (r *Reader) page(ctx context.Context, where, order string, args ...any) ([]
 		return nil, err
 	}
 	defer func() { _ = tx.Rollback() }()
+	return pageOf(ctx, tx, where, order, args...)
+}
+
+func pageOf(ctx context.Context, tx *sql.Tx, where, order string, args ...any) ([]*block, error) {
 	blocks, err := rowsOf(ctx, tx, where, order, args...)
 	if err != nil {
 		return nil, err

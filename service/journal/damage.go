@@ -81,6 +81,18 @@ func storeError(op string, err error) error {
 	return &StoreError{Op: op, Mend: mend, Err: err}
 }
 
+// damageOf is the damage that err tells of; nil where it tells of none.
+func damageOf(err error) *Damage {
+	var d *Damage
+	switch {
+	case errors.As(err, &d):
+		return d
+	case corrupt(err):
+		return &Damage{What: err.Error(), Mend: mendDamage}
+	}
+	return nil
+}
+
 // corrupt says whether SQLite found its own file damaged.
 func corrupt(err error) bool {
 	return is(err, sqlite3.SQLITE_CORRUPT) || is(err, sqlite3.SQLITE_NOTADB)

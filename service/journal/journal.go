@@ -135,7 +135,7 @@ func open(opt Options, path string) (*Journal, error) {
 	}
 	ctx := context.Background()
 	failed := j.store.open(ctx)
-	if failed != nil && !corrupt(failed) {
+	if failed != nil && damageOf(failed) == nil {
 		j.store.close()
 		return nil, storeError("opening the record", failed)
 	}
@@ -150,14 +150,11 @@ func open(opt Options, path string) (*Journal, error) {
 		failed = j.restore(ctx)
 	}
 	if failed != nil {
-		var d *Damage
-		if !errors.As(failed, &d) && !corrupt(failed) {
+		d := damageOf(failed)
+		if d == nil {
 			_ = r.Close()
 			j.store.close()
 			return nil, storeError("opening the record", failed)
-		}
-		if d == nil {
-			d = &Damage{What: failed.Error(), Mend: mendDamage}
 		}
 		j.noteDamage(d)
 	}

@@ -83,10 +83,8 @@ func (r *Reader) List(ctx context.Context, digest string) ([]byte, error) {
 		return nil, &PrunedError{First: block, Last: block}
 	}
 	text, err := r.codec.unpack(packed, size)
-	if err == nil {
-		if got := Digest(sha256.Sum256(text)); string(sum) != string(got[:]) {
-			err = errSum
-		}
+	if got := sha256.Sum256(text); err == nil && string(got[:]) != string(sum) {
+		err = errSum
 	}
 	if err != nil {
 		return nil, r.damaged(&Damage{First: block, Last: block, What: "list " + digest + ": " + err.Error()})

@@ -14,7 +14,7 @@ import (
 // Reader reads what is durable, also while another process writes. It is safe
 // for concurrent use. Whatever it gives out has been checked against the chain.
 type Reader struct {
-	path     string
+	name     string // of the file for the driver, without query_only
 	db       *sql.DB
 	codec    *codec
 	faults   func(op string) error
@@ -58,13 +58,13 @@ func OpenReader(dir string) (*Reader, error) {
 const readConns = 4
 
 func newReader(path, mode string, fault func(string) error) (*Reader, error) {
-	name := dsn(path, mode, "query_only(1)")
+	name := dsn(path, mode)
 	if _, err := os.Stat(path + "-wal"); mode == "ro" && err != nil {
 		// Nothing can be in a log that is not there, and without a writable
 		// folder SQLite could not make the files that it shares with a writer.
 		name += "&immutable=1"
 	}
-	db, err := sql.Open("sqlite", name)
+	db, err := sql.Open("sqlite", name+"&_pragma=query_only(1)")
 	if err != nil {
 		return nil, storeError("opening the record", err)
 	}
@@ -74,7 +74,7 @@ func newReader(path, mode string, fault func(string) error) (*Reader, error) {
 		_ = db.Close()
 		return nil, err
 	}
-	return &Reader{path: path, db: db, codec: c, faults: fault, onDamage: func(*Damage) {}}, nil
+	return &Reader{name: name, db: db, codec: c, faults: fault, onDamage: func(*Damage) {}}, nil
 }
 
 // Close lets go of the file.
@@ -166,12 +166,60 @@ func (r *Reader) Head(ctx context.Context) (uint64, Digest, error) {
 }
 
 func (r *Reader) newest(ctx context.Context) (*block, error) {
+	e, err := r.end(ctx)
+	return e.last, err
+}
+
+// end is how the record ends: the newest block, nil in an empty record, and
+// what the index says of the kinds, both of one instant.
+type end struct {
+	last         *block
+	kinds        map[string]kindRow
+	blocks, cuts int
+}
+
+// end reads how the record ends. Every block has kinds, and the index names
+// the newest block of each kind: so the index vouches for the end, which the
+// chain cannot do.
+func (r *Reader) end(ctx context.Context) (end, error) {
+	const op = "reading the end of the record"
 	if err := r.fault("read"); err != nil {
-		return nil, r.failed("reading the newest block", err)
+		return end{}, r.failed(op, err)
 	}
-	b, err := r.one(ctx, `first = (SELECT max(first) FROM block)`)
+	tx, err := r.db.BeginTx(ctx, &sql.TxOptions{ReadOnly: true})
 	if err != nil {
-		return nil, r.failed("reading the newest block", err)
+		return end{}, r.failed(op, err)
 	}
-	return b, nil
+	defer func() { _ = tx.Rollback() }()
+	var e end
+	newest, err := pageOf(ctx, tx, `b.first = (SELECT max(first) FROM block)`, `b.first LIMIT 1`)
+	if err == nil {
+		e.kinds, err = readKinds(ctx, tx)
+	}
+	if err != nil {
+		return end{}, r.failed(op, err)
+	}
+	first := uint64(0)
+	if len(newest) > 0 {
+		e.last = newest[0]
+		first = e.last.first
+	}
+	named := uint64(0)
+	for _, k := range e.kinds {
+		named = max(named, k.newest)
+	}
+	if named != first {
+		return end{}, r.damaged(&Damage{First: first, Last: named,
+			What: fmt.Sprintf("the newest block is %d and the index says %d: the end is missing", first, named)})
+	}
+	return e, nil
+}
+
+// counts adds how many blocks there are, for whoever shows progress.
+func (r *Reader) counts(ctx context.Context, e *end) error {
+	err := r.db.QueryRowContext(ctx, `SELECT (SELECT count(*) FROM block), (SELECT count(*) FROM cut)`).Scan(&e.blocks, &e.cuts)
+	if err != nil {
+		return r.failed("counting the blocks of the record", err)
+	}
+	return nil
 }

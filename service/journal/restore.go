@@ -25,10 +25,11 @@ func (j *Journal) Cut() *Cut { return j.cut }
 // restart reads: from the block with the newest durable entry to the end, or
 // everything where there is none. Its error is *Damage, or the store's.
 func (j *Journal) restore(ctx context.Context) error {
-	last, err := j.Reader.newest(ctx)
+	e, err := j.end(ctx)
 	if err != nil {
-		return err
+		return j.restoreHead(ctx, err)
 	}
+	last := e.last
 	if last == nil {
 		return nil
 	}
@@ -43,6 +44,24 @@ func (j *Journal) restore(ctx context.Context) error {
 		return err
 	}
 	return j.checkTail(ctx)
+}
+
+// restoreHead takes up the chain at the last block that is there, for a record
+// whose end is missing, so that the record can go on behind the damage. How
+// many entries the missing blocks held is not known; the numbers of one full
+// block are left out, so that no number is likely to be used twice.
+func (j *Journal) restoreHead(ctx context.Context, why error) error {
+	last, err := j.one(ctx, `b.first = (SELECT max(first) FROM block)`)
+	if err != nil || last == nil {
+		return why
+	}
+	var d *Damage
+	if errors.As(why, &d) {
+		j.queued = min(d.Last, 1<<62) + MaxBlockEntries
+	}
+	j.head, j.durable = last.digest, last.last
+	j.queued = max(j.queued, last.last)
+	return why
 }
 
 // cutLast takes off a last block that does not prove itself, provided that the

@@ -209,8 +209,17 @@ func readKinds(ctx context.Context, c interface {
 }
 
 // close lets go of the file. Errors do not matter: what counts was committed.
+// A transaction or a statement left open would keep SQLite's connection, and
+// with it the lock, alive.
 func (s *store) close() {
+	for _, stmt := range []**sql.Stmt{&s.head, &s.insert, &s.list, &s.newKind, &s.oldKind} {
+		if *stmt != nil {
+			_ = (*stmt).Close()
+			*stmt = nil
+		}
+	}
 	if s.conn != nil {
+		_, _ = s.conn.ExecContext(context.Background(), `ROLLBACK`) // fails where none is open
 		_ = s.conn.Close()
 	}
 	if s.db != nil {
