@@ -98,7 +98,7 @@ func varied(rng *rand.Rand, old *ListText, id string) *ListText {
 
 // A list is called tightening only if it opens nothing: at no sampled instant
 // and aim is a beam open with it that was shuttered without. The oracle asks
-// the two checks of lists themselves, at each instant alone. BW-050
+// the two checks of lists themselves, at each instant alone. BW-014
 func TestTighteningNeverOpens(t *testing.T) {
 	const pairs = 12_000
 	rng := rand.New(rand.NewPCG(3, 4))

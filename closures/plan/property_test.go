@@ -218,7 +218,7 @@ func randomList(t testing.TB, rng *rand.Rand, n *night, i int) *closures.List {
 // A plan and the decisions of its night agree: wherever a target is allowed, a
 // decision for that aim, with the live checks aside, finds nothing foreseeable
 // against it; and where it is blocked by what has exact edges a decision finds
-// it. Edges found by search may lie inward by the plan's tolerance. BW-040
+// it. Edges found by search may lie inward by the plan's tolerance. BW-018
 func TestPlanAgreesWithDecisions(t *testing.T) {
 	const targets, random = 20, 500
 	nights := 8
