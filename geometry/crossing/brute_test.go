@@ -125,7 +125,7 @@ type found struct {
 }
 
 const (
-	sides  = 8  // of the beam's and the aperture's rims
+	sides  = 6  // of the beam's and the aperture's rims
 	coarse = 24 // points along the beam, before the nearest ones are looked at closely
 )
 
