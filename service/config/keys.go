@@ -55,7 +55,7 @@ type permitKeys struct {
 
 type tlsKeys struct {
 	Cert     text `key:"cert_file" form:"path" need:"yes" doc:"PEM file of the server's certificate chain."`
-	Key      text `key:"key_file" form:"path" need:"yes" doc:"PEM file of its private key, readable by the service alone."`
+	Key      text `key:"key_file" form:"path" need:"yes" doc:"PEM file of its private key, which not everyone may read."`
 	ClientCA text `key:"client_ca_file" form:"path" doc:"PEM file of the authorities that sign client certificates."`
 }
 
