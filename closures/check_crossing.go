@@ -120,7 +120,7 @@ func (f *Foreseen) pair(q *Question, n *NeighbourRules, p *Pointing, l *Launch) 
 	}
 	beam := crossing.Beam{
 		Site: f.Rules.Site.Position, Launch: l.Offset, Radius: b.Aperture / 2, Spread: max(profile.Divergence()/2, s1.Angle(seeing)),
-		AimError: q.extent() + night + bending, Rate: ours,
+		AimError: q.extent() + night + bending + f.converging(b, l), Rate: ours,
 	}
 	telescope := crossing.Telescope{Position: n.Offset, Field: field, Aperture: n.Aperture, AimError: p.Aim.Error + n.AimError + night + bending, Rate: rate}
 	star := crossing.Sodium(n.Halo)
@@ -128,6 +128,20 @@ func (f *Foreseen) pair(q *Question, n *NeighbourRules, p *Pointing, l *Launch) 
 		star = crossing.Part{From: b.GuideStar.From, Until: b.GuideStar.Until, Halo: n.Halo}
 	}
 	return crossing.Prepare(beam, telescope, crossing.Column(n.Halo), star)
+}
+
+// converging bounds the angle between the aim and the direction from a launch
+// beside the site's origin to the lowest light of the star.
+func (f *Foreseen) converging(b *BeamRules, l *Launch) s1.Angle {
+	lowest := crossing.SodiumFrom
+	if b.GuideStar.Rayleigh {
+		lowest = b.GuideStar.From
+	}
+	lowest -= f.Rules.Site.Position.Height
+	if !(lowest > 0) {
+		return math.Pi
+	}
+	return s1.Angle(math.Atan2(l.Offset.Norm(), float64(lowest)))
 }
 
 // seeing is the least half angle to which the air widens a beam: 1 arcsec.
