@@ -3,19 +3,19 @@ package span
 import "time"
 
 // Union returns the instants that s or o holds.
-func (s Set) Union(o Set) Set { return UnionInto(nil, s, o) }
+func (s Set) Union(o Set) Set { return AppendUnion(nil, s, o) }
 
 // Intersect returns the instants that both s and o hold.
-func (s Set) Intersect(o Set) Set { return IntersectInto(nil, s, o) }
+func (s Set) Intersect(o Set) Set { return AppendIntersect(nil, s, o) }
 
 // Subtract returns the instants that s holds and o does not.
-func (s Set) Subtract(o Set) Set { return SubtractInto(nil, s, o) }
+func (s Set) Subtract(o Set) Set { return AppendSubtract(nil, s, o) }
 
 // Within returns the instants of s that lie in over.
-func (s Set) Within(over Span) Set { return IntersectInto(nil, s, one(&over)) }
+func (s Set) Within(over Span) Set { return AppendIntersect(nil, s, one(&over)) }
 
 // Complement returns the instants of over that s does not hold.
-func (s Set) Complement(over Span) Set { return SubtractInto(nil, one(&over), s) }
+func (s Set) Complement(over Span) Set { return AppendSubtract(nil, one(&over), s) }
 
 // Widen returns s with each of its spans widened as Span.Widen does.
 func (s Set) Widen(lead, tail time.Duration) Set {
@@ -43,9 +43,10 @@ func one(o *Span) Set {
 	return Set{*o}
 }
 
-// UnionInto writes over dst with the instants that a or b holds, in its memory
-// as far as that goes. dst must not share memory with a or b.
-func UnionInto(dst, a, b Set) Set {
+// AppendUnion writes over dst with the instants that a or b holds, in its memory
+// as far as that goes. Unlike AppendBelow it keeps nothing of what dst holds;
+// dst must not share memory with a or b.
+func AppendUnion(dst, a, b Set) Set {
 	dst = dst[:0]
 	for len(a) > 0 || len(b) > 0 {
 		if len(b) == 0 || len(a) > 0 && a[0].From.Before(b[0].From) {
@@ -57,8 +58,8 @@ func UnionInto(dst, a, b Set) Set {
 	return dst
 }
 
-// IntersectInto is UnionInto for the instants that both a and b hold.
-func IntersectInto(dst, a, b Set) Set {
+// AppendIntersect is AppendUnion for the instants that both a and b hold.
+func AppendIntersect(dst, a, b Set) Set {
 	dst = dst[:0]
 	for len(a) > 0 && len(b) > 0 {
 		dst = dst.put(a[0].Intersect(b[0]))
@@ -71,8 +72,8 @@ func IntersectInto(dst, a, b Set) Set {
 	return dst
 }
 
-// SubtractInto is UnionInto for the instants that a holds and b does not.
-func SubtractInto(dst, a, b Set) Set {
+// AppendSubtract is AppendUnion for the instants that a holds and b does not.
+func AppendSubtract(dst, a, b Set) Set {
 	dst = dst[:0]
 	for _, left := range a {
 		for len(b) > 0 && !b[0].Until.After(left.From) {

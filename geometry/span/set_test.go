@@ -185,11 +185,11 @@ func TestSpan(t *testing.T) {
 	}
 }
 
-func TestIntoUsesTheMemoryItIsGiven(t *testing.T) {
+func TestAppendUsesTheMemoryItIsGiven(t *testing.T) {
 	a := Make(Span{second(0), second(5)}, Span{second(10), second(15)}, Span{second(20), second(25)})
 	b := Make(Span{second(3), second(12)}, Span{second(22), second(23)})
 	dst := make(Set, 0, 16)
-	for name, op := range map[string]func(dst, a, b Set) Set{"union": UnionInto, "intersect": IntersectInto, "subtract": SubtractInto} {
+	for name, op := range map[string]func(dst, a, b Set) Set{"union": AppendUnion, "intersect": AppendIntersect, "subtract": AppendSubtract} {
 		if n := testing.AllocsPerRun(20, func() { dst = op(dst, a, b) }); n != 0 {
 			t.Errorf("%s: %v allocations", name, n)
 		}
