@@ -53,7 +53,7 @@ func TestTheSmallSite(t *testing.T) {
 		Clock: closures.ClockRules{Synchronised: closures.SyncAssumed, StepLimit: 100 * time.Millisecond},
 		ByItself: closures.Codes(0).With(closures.CodeListedClosure).With(closures.CodeNotCovered).With(closures.CodeHold).
 			With(closures.CodeElevationLimit).With(closures.CodeDaylight).With(closures.CodeAimUnknown).With(closures.CodeSlewing).
-			With(closures.CodeSourceSilent).With(closures.CodeStarting),
+			With(closures.CodeSourceSilent).With(closures.CodeStarting).With(closures.CodeInterlock).With(closures.CodeClock).With(closures.CodeRecord),
 		Beams: []closures.BeamRules{{
 			ID: "north", Launches: []closures.Launch{{ID: "axis", Offset: r3.Vector{Z: 12}}}, AimOfTelescope: true,
 			Wavelength: 589.158e-9, PowerW: 22, Aperture: 0.30, FocusHeight: 92000, Asterism: 20 * geometry.Arcsecond,
