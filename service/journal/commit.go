@@ -125,7 +125,7 @@ func (s *store) write(ctx context.Context, b *sealed, kinds map[string]kindRow) 
 		if err := s.fault("list"); err != nil {
 			return err
 		}
-		if _, err := s.list.ExecContext(ctx, l.digest, int64(b.first), l.sum[:], l.size, l.packed); err != nil {
+		if _, err := s.list.ExecContext(ctx, int64(b.first), l.digest, l.sum[:], l.size, l.packed); err != nil {
 			return err
 		}
 	}
@@ -150,4 +150,27 @@ func (s *store) nextKind(kinds map[string]kindRow) int64 {
 		}
 	}
 	return id
+}
+
+// transact runs do between BEGIN and COMMIT, opening the file where need be
+// and closing it on error.
+func (s *store) transact(ctx context.Context, op string, do func() error) (err error) {
+	defer func() {
+		if err != nil {
+			s.close()
+		}
+	}()
+	if err := s.ready(ctx); err != nil {
+		return err
+	}
+	if err := s.fault(op); err != nil {
+		return err
+	}
+	if err := s.begin(ctx); err != nil {
+		return err
+	}
+	if err := do(); err != nil {
+		return err
+	}
+	return s.end(ctx)
 }

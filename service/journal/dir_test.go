@@ -63,6 +63,21 @@ func TestOpenRefuses(t *testing.T) {
 	}
 }
 
+func TestOddPath(t *testing.T) {
+	dir := filepath.Join(t.TempDir(), "a b?c=d&e#f%20é;'")
+	j := mustOpen(t, Options{Dir: dir})
+	must(t, j.Append(entries(1, 3, "aim")))
+	must(t, j.Flush(context.Background()))
+	must(t, j.Backup(context.Background(), filepath.Join(dir, "copy 'of' it?.db")))
+	must(t, j.Close())
+	if _, err := os.Stat(filepath.Join(dir, File)); err != nil {
+		t.Fatal(err)
+	}
+	if rep := verify(t, dir); rep.Last != 3 || rep.Damage != nil {
+		t.Fatalf("%+v", rep)
+	}
+}
+
 func TestTwoOpeners(t *testing.T) {
 	dir, all := small(t)
 	j := mustOpen(t, Options{Dir: dir})

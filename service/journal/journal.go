@@ -82,6 +82,7 @@ type Journal struct {
 	durable   uint64
 	queued    uint64
 	lists     map[string]Digest // sums of the texts on record or queued
+	named     map[string]bool   // digests that came with an Append since Open
 	lost      []run
 	err       error
 	failures  uint64
@@ -130,6 +131,7 @@ func open(opt Options, path string) (*Journal, error) {
 		store:     &store{path: path, fault: opt.Fault},
 		queue:     queue{capacity: opt.Capacity, reserve: opt.Reserve},
 		lists:     map[string]Digest{},
+		named:     map[string]bool{},
 		news:      make(chan struct{}),
 		listeners: map[chan<- struct{}]int{},
 	}
@@ -214,8 +216,9 @@ func (j *Journal) Append(entries []Entry, blobs ...Blob) error {
 		}
 		return ErrFull
 	}
-	for _, b := range fresh {
+	for _, b := range blobs {
 		j.lists[b.digest] = b.sum
+		j.named[b.digest] = true
 	}
 	j.queue.add(entries, fresh, now)
 	j.queued = last

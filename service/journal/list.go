@@ -69,7 +69,7 @@ func (r *Reader) List(ctx context.Context, digest string) ([]byte, error) {
 	var block uint64
 	var size int64
 	var sum, packed []byte
-	row := r.db.QueryRowContext(ctx, `SELECT block, size, sum, text FROM list WHERE digest = ?`, digest)
+	row := r.db.QueryRowContext(ctx, `SELECT block, size, sum, text FROM list WHERE digest = ? ORDER BY block DESC LIMIT 1`, digest)
 	err := r.fault("read")
 	if err == nil {
 		err = row.Scan(&block, &size, &sum, &packed)

@@ -17,7 +17,8 @@ type Retention struct {
 	KeepKinds []string
 	// DropLists lets the texts of pruned blocks go too, but for KeepLists,
 	// which names those still in use: a text is recorded once, and what uses
-	// it may be far younger.
+	// it may be far younger. Texts that came with an Append since Open are
+	// kept, recorded before or not.
 	DropLists bool
 	KeepLists []string
 }
@@ -63,14 +64,18 @@ func (j *Journal) Prune(ctx context.Context, keep Retention) (Pruned, error) {
 			return gone, j.failed("pruning the record", err)
 		}
 		if len(page) == 0 {
-			return gone, nil
+			break
 		}
 		after = int64(page[len(page)-1].first)
 		page = slices.DeleteFunc(page, func(b *block) bool { return slices.Contains(spare, b.first) })
-		if err := j.pruneSome(ctx, page, keep, &gone); err != nil {
+		if err := j.pruneSome(ctx, page, &gone); err != nil {
 			return gone, err
 		}
 	}
+	if keep.DropLists {
+		err = j.pruneLists(ctx, keep.KeepLists, &gone)
+	}
+	return gone, err
 }
 
 func (j *Journal) newestOf(ctx context.Context, names []string) ([]uint64, error) {
@@ -86,7 +91,7 @@ func (j *Journal) newestOf(ctx context.Context, names []string) ([]uint64, error
 }
 
 // pruneSome proves and prunes a page in one transaction.
-func (j *Journal) pruneSome(ctx context.Context, page []*block, keep Retention, gone *Pruned) error {
+func (j *Journal) pruneSome(ctx context.Context, page []*block, gone *Pruned) error {
 	type row struct {
 		b       *block
 		content Digest
@@ -117,15 +122,6 @@ func (j *Journal) pruneSome(ctx context.Context, page []*block, keep Retention, 
 			}
 			done.Blocks++
 			done.Entries += uint64(x.b.count)
-			for _, l := range x.b.lists {
-				if !keep.DropLists || slices.Contains(keep.KeepLists, l.digest) {
-					continue
-				}
-				if _, err := j.store.conn.ExecContext(ctx, `UPDATE list SET text = NULL WHERE digest = ?`, l.digest); err != nil {
-					return err
-				}
-				done.Lists++
-			}
 		}
 		return nil
 	})
@@ -134,7 +130,6 @@ func (j *Journal) pruneSome(ctx context.Context, page []*block, keep Retention, 
 	}
 	gone.Blocks += done.Blocks
 	gone.Entries += done.Entries
-	gone.Lists += done.Lists
 	return nil
 }
 
@@ -142,27 +137,4 @@ func (j *Journal) isClosed() bool {
 	j.mu.Lock()
 	defer j.mu.Unlock()
 	return j.closed
-}
-
-// transact runs do between BEGIN and COMMIT, opening the file where need be
-// and closing it on error.
-func (s *store) transact(ctx context.Context, op string, do func() error) (err error) {
-	defer func() {
-		if err != nil {
-			s.close()
-		}
-	}()
-	if err := s.ready(ctx); err != nil {
-		return err
-	}
-	if err := s.fault(op); err != nil {
-		return err
-	}
-	if err := s.begin(ctx); err != nil {
-		return err
-	}
-	if err := do(); err != nil {
-		return err
-	}
-	return s.end(ctx)
 }

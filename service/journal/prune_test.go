@@ -61,6 +61,29 @@ func TestPruneKeepsWhatARestartNeeds(t *testing.T) {
 	if s := j.State(); !s.Sound || s.Durable != 24 {
 		t.Fatalf("opened after pruning: %+v", s)
 	}
+	// A text that went is recorded again when it comes again, and then kept.
+	b, err := Pack("sha256:1", []byte("a list a list "))
+	must(t, err)
+	must(t, j.Append(entries(25, 25, "aim"), b))
+	must(t, j.Append([]Entry{entry(26, KindDurable)}, b))
+	must(t, j.Flush(ctx))
+	if text, err := j.List(ctx, "sha256:1"); err != nil || string(text) != "a list a list " {
+		t.Fatalf("recorded again: %q %v", text, err)
+	}
+	if p, err := j.Prune(ctx, Retention{Before: later, DropLists: true}); err != nil || p.Lists != 2 {
+		t.Fatalf("pruned %+v, %v", p, err)
+	}
+	if _, err := j.List(ctx, "sha256:1"); err != nil {
+		t.Fatalf("recorded again and pruned: %v", err)
+	}
+	if rep, err := j.Verify(ctx, nil); err != nil || rep.Damage != nil {
+		t.Fatalf("verify: %+v %v", rep, err)
+	}
+	other, err := Pack("sha256:1", []byte("another list"))
+	must(t, err)
+	if err := j.Append(entries(27, 27, "aim"), other); !errors.Is(err, ErrConflict) {
+		t.Fatalf("another text under one digest: %v", err)
+	}
 }
 
 func TestPruneKeepsKinds(t *testing.T) {

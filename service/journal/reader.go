@@ -93,8 +93,8 @@ func (r *Reader) failed(op string, err error) error {
 	if errors.Is(err, context.Canceled) || errors.Is(err, context.DeadlineExceeded) {
 		return fmt.Errorf("%s: %w", op, err)
 	}
-	if corrupt(err) {
-		return r.damaged(&Damage{What: err.Error()})
+	if d := damageOf(err); d != nil {
+		return r.damaged(d)
 	}
 	return storeError(op, err)
 }
@@ -109,23 +109,15 @@ func (r *Reader) damaged(d *Damage) error {
 
 // LastOf finds the newest entry of a kind; false when there is none.
 func (r *Reader) LastOf(ctx context.Context, kind string) (Entry, bool, error) {
-	if err := r.fault("read"); err != nil {
+	b, newest, err := r.blockOf(ctx, kind)
+	if err != nil {
 		return Entry{}, false, r.failed("looking for the newest "+kind, err)
 	}
-	var newest int64
-	err := r.db.QueryRowContext(ctx, `SELECT newest FROM kind WHERE name = ?`, kind).Scan(&newest)
-	if errors.Is(err, sql.ErrNoRows) {
+	if newest == 0 {
 		return Entry{}, false, nil
 	}
-	if err != nil {
-		return Entry{}, false, r.failed("looking for the newest "+kind, err)
-	}
-	b, err := r.one(ctx, `first = ?`, newest)
-	if err != nil {
-		return Entry{}, false, r.failed("looking for the newest "+kind, err)
-	}
 	if b == nil {
-		return Entry{}, false, r.damaged(&Damage{First: uint64(newest), Last: uint64(newest), What: "the block with the newest " + kind + " is missing"})
+		return Entry{}, false, r.damaged(&Damage{First: newest, Last: newest, What: "the block with the newest " + kind + " is missing"})
 	}
 	var found Entry
 	err = r.each(b, func(e Entry, _ Digest) error {
@@ -138,6 +130,33 @@ func (r *Reader) LastOf(ctx context.Context, kind string) (Entry, bool, error) {
 		err = r.damaged(&Damage{First: b.first, Last: b.last, What: "the block holds no " + kind + ", which its index says"})
 	}
 	return found, err == nil, err
+}
+
+// blockOf reads the block that the index names for a kind, and its number, 0
+// where the kind never came. Both are of one instant: a moment later the block
+// may be pruned for a newer one.
+func (r *Reader) blockOf(ctx context.Context, kind string) (*block, uint64, error) {
+	if err := r.fault("read"); err != nil {
+		return nil, 0, err
+	}
+	tx, err := r.db.BeginTx(ctx, &sql.TxOptions{ReadOnly: true})
+	if err != nil {
+		return nil, 0, err
+	}
+	defer func() { _ = tx.Rollback() }()
+	var newest int64
+	err = tx.QueryRowContext(ctx, `SELECT newest FROM kind WHERE name = ?`, kind).Scan(&newest)
+	if errors.Is(err, sql.ErrNoRows) {
+		return nil, 0, nil
+	}
+	if err != nil {
+		return nil, 0, err
+	}
+	blocks, err := pageOf(ctx, tx, `b.first = ?`, `b.first LIMIT 1`, newest)
+	if err != nil || len(blocks) == 0 {
+		return nil, uint64(newest), err
+	}
+	return blocks[0], uint64(newest), nil
 }
 
 // Last is the newest durable entry; false when there is none.

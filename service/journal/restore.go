@@ -122,9 +122,9 @@ func (s *store) cut(ctx context.Context, b *block, why string, at int64) (err er
 	return err
 }
 
-// knowLists loads the sums of all texts on record.
+// knowLists loads the sums of all texts that are on record and not pruned.
 func (j *Journal) knowLists(ctx context.Context) error {
-	rows, err := j.db.QueryContext(ctx, `SELECT digest, sum FROM list`)
+	rows, err := j.db.QueryContext(ctx, `SELECT digest, sum FROM list WHERE text IS NOT NULL`)
 	if err != nil {
 		return err
 	}

@@ -37,13 +37,14 @@ CREATE TABLE kind (
 	newest INTEGER NOT NULL     -- first of the newest block with an entry of this kind
 ) STRICT;
 CREATE TABLE list (
-	digest TEXT PRIMARY KEY,
 	block  INTEGER NOT NULL,    -- first of the block it was recorded with
+	digest TEXT NOT NULL,
 	sum    BLOB NOT NULL,
 	size   INTEGER NOT NULL,
-	text   BLOB                 -- NULL: pruned
+	text   BLOB,                -- NULL: pruned; the text may be recorded again with a later block
+	PRIMARY KEY (block, digest)
 ) STRICT;
-CREATE INDEX list_block ON list (block, digest);
+CREATE INDEX list_digest ON list (digest, block);
 CREATE TABLE cut (
 	at     INTEGER NOT NULL,    -- when it was cut, microseconds since 1970
 	why    TEXT NOT NULL,
@@ -119,7 +120,7 @@ func (s *store) open(ctx context.Context) (err error) {
 	}{
 		{&s.head, `SELECT last, digest FROM block ORDER BY first DESC LIMIT 1`},
 		{&s.insert, `INSERT INTO block (first, last, count, at_min, at_max, kinds, lists, size, digest, body) VALUES (?,?,?,?,?,?,?,?,?,?)`},
-		{&s.list, `INSERT INTO list (digest, block, sum, size, text) VALUES (?,?,?,?,?)`},
+		{&s.list, `INSERT INTO list (block, digest, sum, size, text) VALUES (?,?,?,?,?)`},
 		{&s.newKind, `INSERT INTO kind (id, name, newest) VALUES (?,?,?)`},
 		{&s.oldKind, `UPDATE kind SET newest = ? WHERE id = ?`},
 	} {

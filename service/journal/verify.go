@@ -158,12 +158,13 @@ func (v *verifier) texts(ctx context.Context) error {
 	if stray > 0 {
 		return v.r.damaged(&Damage{What: fmt.Sprintf("%d texts belong to no block", stray)})
 	}
-	after := ""
+	after, afterBlock := "", int64(0)
 	for {
 		var name string
 		var block, size int64
 		var sum, packed []byte
-		rows, err := v.r.db.QueryContext(ctx, `SELECT digest, block, size, sum, text FROM list WHERE digest > ? ORDER BY digest LIMIT 1`, after)
+		rows, err := v.r.db.QueryContext(ctx, `SELECT digest, block, size, sum, text FROM list
+			WHERE (block, digest) > (?, ?) ORDER BY block, digest LIMIT 1`, afterBlock, after)
 		if err != nil {
 			return v.r.failed(op, err)
 		}
@@ -177,11 +178,8 @@ func (v *verifier) texts(ctx context.Context) error {
 		if !found {
 			return nil
 		}
-		after = name
-		if uint64(block) > v.rep.Last {
-			continue // recorded after the walk began
-		}
-		if packed == nil {
+		after, afterBlock = name, block
+		if packed == nil || uint64(block) > v.rep.Last { // pruned, or recorded after the walk began
 			continue
 		}
 		text, err := v.r.codec.unpack(packed, size)

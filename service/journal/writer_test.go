@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
+	"sync"
 	"sync/atomic"
 	"testing"
 	"time"
@@ -91,7 +92,7 @@ func TestCloseTellsWhatIsMissing(t *testing.T) {
 func TestEveryStepMayFail(t *testing.T) {
 	for _, op := range []string{"open", "begin", "list", "block", "commit", "committed"} {
 		for k := range 3 {
-			for _, times := range []int{1, 10} {
+			for _, times := range []int{1, 10}[:1+1/thin] { // only once under the race detector
 				t.Run(fmt.Sprintf("%s/%d/%d", op, k, times), func(t *testing.T) {
 					f := &faults{}
 					clk := newHandClock()
@@ -234,5 +235,48 @@ func TestAnotherWriterIsNoticed(t *testing.T) {
 	}
 	if s := j.State(); s.Damage == nil || s.Sound {
 		t.Fatalf("state: %+v", s)
+	}
+}
+
+// Everything at once; the race detector looks on.
+func TestConcurrentUse(t *testing.T) {
+	j := mustOpen(t, Options{Dir: place(t), Clock: machineClock{time.Now()}, BlockAge: time.Millisecond})
+	news := make(chan struct{}, 1)
+	defer j.Notify(news)()
+	started(t, j)
+	ctx := context.Background()
+	const last = 500
+	var all sync.WaitGroup
+	for _, do := range []func() error{
+		func() error { _, err := j.Verify(ctx, nil); return err },
+		func() error { _, _, err := j.LastOf(ctx, KindDurable); return err },
+		func() error {
+			return j.Read(ctx, Query{NewestFirst: true, Pruned: func(uint64, uint64, int) error { return nil }}, func(Entry) error { return nil })
+		},
+		func() error { _, err := j.Prune(ctx, Retention{Before: later}); return err },
+		func() error { return j.Flush(ctx) },
+		func() error { return j.Backup(ctx, filepath.Join(t.TempDir(), "copy")) },
+	} {
+		all.Go(func() {
+			for j.State().Durable < last {
+				if err := do(); err != nil {
+					t.Error(err)
+					return
+				}
+				if rep, err := j.Verify(ctx, nil); err != nil || rep.Damage != nil {
+					t.Error(rep.Damage, err)
+					return
+				}
+			}
+		})
+	}
+	for seq := uint64(1); seq <= last; seq += 10 {
+		must(t, j.Append(append(entries(seq, seq+8, "aim"), entry(seq+9, KindDurable))))
+		must(t, j.Wait(ctx, seq))
+	}
+	must(t, j.Wait(ctx, last))
+	all.Wait()
+	if s := j.State(); !s.Sound || s.Durable != last {
+		t.Fatalf("at the end: %+v", s)
 	}
 }
