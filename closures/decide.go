@@ -38,7 +38,7 @@ func (s *State) Step(batch []Fact, at time.Time, out []Decision) []Decision {
 		s.hit(b)
 		sh := &s.sheet
 		s.look(b, at, sh)
-		if b.latch.settle(s.rules, nonClear(sh), at) {
+		if b.latch.settle(s.rules, nonClear(sh), b.asksFor(sh), at) {
 			s.durable++
 		}
 		b.latch.write(b.rules, at, sh)
@@ -213,6 +213,22 @@ func nonClear(sh *Sheet) Codes {
 		}
 	}
 	return s
+}
+
+// asksFor returns which of the closed codes may ask for a person afterwards.
+// Until everything required has been heard once since the start, what is only
+// unknown belongs to the start, which asks for itself.
+func (b *beam) asksFor(sh *Sheet) Codes {
+	asks := AllCodes
+	if b.wasStarted {
+		return asks
+	}
+	for c := Code(0); c < NumCodes; c++ {
+		if c != CodeStarting && sh.Answers[c].Verdict == Unknown {
+			asks = asks.Without(c)
+		}
+	}
+	return asks
 }
 
 // conclude folds the sheet into a decision, in d's own memory.

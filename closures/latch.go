@@ -10,15 +10,16 @@ type latch struct {
 	need   Codes     // causes that ask for a person
 }
 
-// settle takes in what is closed at an instant, apart from the latch itself.
-func (l *latch) settle(r *Rules, closed Codes, at time.Time) (changed bool) {
+// settle takes in what is closed at an instant, apart from the latch itself,
+// and which of it may ask for a person.
+func (l *latch) settle(r *Rules, closed, asks Codes, at time.Time) (changed bool) {
 	closed = closed.Without(CodeReopening).Without(CodeRearm)
 	if closed == 0 {
 		return false
 	}
 	l.closed = at
 	before := l.need
-	l.need |= closed &^ r.ByItself
+	l.need |= closed & asks &^ r.ByItself
 	return l.need != before
 }
 

@@ -119,7 +119,7 @@ func (s *State) setRules(r *Rules) {
 	for i := range r.Beams {
 		// A beam begins as if it had just been closed by the start.
 		s.beams[i] = beam{rules: &r.Beams[i]}
-		s.beams[i].latch.settle(r, Codes(0).With(CodeStarting), s.at)
+		s.beams[i].latch.settle(r, Codes(0).With(CodeStarting), AllCodes, s.at)
 		for j := range old {
 			if old[j].rules.ID == r.Beams[i].ID {
 				s.beams[i] = old[j]
