@@ -5,6 +5,8 @@ import (
 	"math"
 	"testing"
 	"time"
+
+	"beamward/closures"
 )
 
 const aircraftLine = `{"kind":"aircraft","source":"rx-1","at":"2031-02-14T03:10:01.512Z","aircraft":"a1b2c3","lat_deg":-31.512345,"lon_deg":-4.012345,"altitude_m":10972.8,"altitude_from":"pressure","speed_mps":231.5,"track_deg":87.25,"climb_mps":-2.54,"error_m":92.6,"vertical_error_m":45,"velocity_error_mps":10,"on_ground":false}`
@@ -94,4 +96,32 @@ func BenchmarkAppendFact(b *testing.B) {
 	for b.Loop() {
 		dst, _ = AppendFact(dst[:0], body)
 	}
+}
+
+// BenchmarkRecord writes and reads an aircraft fact in the record's form:
+// budget 20,000 a second, admitted, decided and recorded.
+func BenchmarkRecord(b *testing.B) {
+	name, body, err := ParseFact([]byte(aircraftLine), received)
+	if err != nil {
+		b.Fatal(err)
+	}
+	fact := closures.Fact{From: name, Body: body}
+	kind, text, err := EncodeBody(nil, fact)
+	if err != nil {
+		b.Fatal(err)
+	}
+	b.Run("encode", func(b *testing.B) {
+		var dst []byte
+		b.ReportAllocs()
+		for b.Loop() {
+			_, dst, _ = EncodeBody(dst[:0], fact)
+		}
+		b.ReportMetric(float64(len(text)), "bytes")
+	})
+	b.Run("decode", func(b *testing.B) {
+		b.ReportAllocs()
+		for b.Loop() {
+			_, _ = DecodeBody(kind, text, Resolver{})
+		}
+	})
 }
