@@ -1,0 +1,161 @@
+package closures
+
+import (
+	"testing"
+	"time"
+
+	"github.com/golang/geo/s1"
+
+	"beamward/geometry"
+	"beamward/geometry/span"
+)
+
+// listed asks a list alone whether it closes the world's aim at an instant.
+func (w *world) listed(l *List, waiting bool, a *Aim, at time.Time) bool {
+	f := Foreseen{Rules: w.r, Lists: []Listed{{List: l, Waiting: waiting}}, Air: w.r.Site.Air.Over(w.r.Site.Position.Height)}
+	q := Question{Beam: &w.r.Beams[0], Aim: a, Over: span.Span{From: at, Until: at.Add(1)}, Nights: w.s.Nights(), Edge: EdgeDecide, Now: at}
+	var sh Sheet
+	listedClosure{}.Look(&f, &q, &sh)
+	return sh.Answers[CodeListedClosure].Verdict != Clear
+}
+
+// The matching dual: open only where an open region must hold the aim, closed
+// wherever a closed one might. The error here is 35 arcsec and the asterism 20,
+// so light may lie up to 55 arcsec from the aim. BW-016
+func TestMatchingDual(t *testing.T) {
+	w := newWorld(t, siteRules())
+	aim := &Aim{Frame: ICRS, Direction: w.dir, Error: 5 * geometry.Arcsecond, Motion: Tracking}
+	beside := func(arcsec float64) Region {
+		d := w.dir.Add(w.dir.Ortho().Mul(s1.Angle(arcsec * float64(geometry.Arcsecond)).Radians())).Normalize()
+		return Region{ID: "r", Shape: ICRSCone, Direction: d, Radius: 300 * geometry.Arcsecond}
+	}
+	list := func(r Region, unlistedOpen, open bool) *List {
+		at := w.at
+		l, err := Index(&ListText{
+			ID: "l", Authority: "orbital-desk", Issued: at, Covers: span.Span{From: at.Add(-time.Hour), Until: at.Add(time.Hour)}, UnlistedOpen: unlistedOpen, Digest: Digest{1},
+			Regions: []Region{r}, Windows: []Window{{Region: 0, Open: open, From: at.Add(-time.Minute).UnixNano(), Until: at.Add(time.Minute).UnixNano()}},
+		})
+		if err != nil {
+			t.Fatal(err)
+		}
+		return l
+	}
+	for _, c := range []struct {
+		arcsec           float64
+		closedBy, opened bool // a closed window shutters; an open one opens
+	}{
+		{0, true, true}, {244, true, true}, {246, true, false}, {300, true, false}, {354, true, false}, {356, false, false}, {1000, false, false},
+	} {
+		if got := w.listed(list(beside(c.arcsec), true, false), false, aim, w.at); got != c.closedBy {
+			t.Errorf("closed window, %v arcsec beside: closed %v", c.arcsec, got)
+		}
+		if got := !w.listed(list(beside(c.arcsec), false, true), false, aim, w.at); got != c.opened {
+			t.Errorf("open window, %v arcsec beside: open %v", c.arcsec, got)
+		}
+	}
+}
+
+// A window closes from lead before it to tail after it; an open one opens from
+// tail after its start to lead before its end; both to the nanosecond.
+func TestLeadAndTail(t *testing.T) {
+	r := siteRules()
+	r.Authorities[0].Lead, r.Authorities[0].Tail = 5*time.Second, 3*time.Second
+	w := newWorld(t, r)
+	aim := &Aim{Frame: ICRS, Direction: w.dir, Motion: Tracking}
+	from, until := w.at.Add(time.Minute), w.at.Add(2*time.Minute)
+	text := func(open bool) *ListText {
+		return &ListText{
+			ID: "l", Authority: "orbital-desk", Issued: w.at, Covers: span.Span{From: w.at.Add(-time.Hour), Until: w.at.Add(time.Hour)}, UnlistedOpen: !open, Digest: Digest{1},
+			Regions: []Region{{ID: "r", Shape: ICRSCone, Direction: w.dir, Radius: s1.Degree}},
+			Windows: []Window{{Region: 0, Open: open, From: from.UnixNano(), Until: until.UnixNano()}},
+		}
+	}
+	closedList, _ := Index(text(false))
+	openedList, _ := Index(text(true))
+	for _, c := range []struct {
+		at     time.Time
+		closed bool
+	}{
+		{from.Add(-5*time.Second - 1), false}, {from.Add(-5 * time.Second), true}, {until.Add(3*time.Second - 1), true}, {until.Add(3 * time.Second), false},
+	} {
+		if got := w.listed(closedList, false, aim, c.at); got != c.closed {
+			t.Errorf("closed window at %v: %v", c.at.Sub(from), got)
+		}
+	}
+	for _, c := range []struct {
+		at     time.Time
+		closed bool
+	}{
+		{from.Add(3*time.Second - 1), true}, {from.Add(3 * time.Second), false}, {until.Add(-5*time.Second - 1), false}, {until.Add(-5 * time.Second), true},
+	} {
+		if got := w.listed(openedList, false, aim, c.at); got != c.closed {
+			t.Errorf("open window at %v: %v", c.at.Sub(from), got)
+		}
+	}
+}
+
+// A waiting list closes at once and opens nothing (BW-015); time that nothing
+// covers is closed (BW-017), with no gap where two lists meet.
+func TestWaitingAndCoverage(t *testing.T) {
+	r := siteRules()
+	r.Authorities[0].Loosening = LooseningSecondPerson
+	w := newWorld(t, r)
+	half := func(id ListID, from, until time.Duration) *List {
+		l, err := Index(&ListText{ID: id, Authority: "orbital-desk", Issued: w.at, Covers: span.Span{From: w.at.Add(from), Until: w.at.Add(until)}, UnlistedOpen: true, Digest: Digest{byte(id[0])}})
+		if err != nil {
+			t.Fatal(err)
+		}
+		return l
+	}
+	a, b := half("a", -time.Hour, 30*time.Second), half("b", 30*time.Second, 90*time.Second)
+	for _, l := range []*List{a, b} {
+		w.step(0, ListOffered{List: l, By: "ana"})
+		w.step(0, ListConfirmed{Authority: "orbital-desk", ID: l.ID(), Digest: l.Digest(), By: "bo"})
+		if bad := w.s.Refused(); len(bad) > 0 {
+			t.Fatal(bad[0].Err)
+		}
+	}
+	w.mustOpen()
+	start := w.at
+	for w.at.Before(evening.Add(80 * time.Second)) {
+		if d := w.step(100 * time.Millisecond); !d.Open {
+			t.Fatalf("%v: %s", w.at.Sub(start), reasons(d))
+		}
+	}
+	// The coverage ends at 90 s: shuttered from lead, margin time and the
+	// clock's error before.
+	for w.last[0].Open {
+		w.step(10 * time.Millisecond)
+	}
+	early := evening.Add(90 * time.Second).Sub(w.at)
+	if want := 5*time.Second + 700*time.Millisecond + 10*time.Millisecond; early < want || early > want+10*time.Millisecond {
+		t.Errorf("shuttered %v before the end of the coverage, want %v", early, want)
+	}
+	if !w.last[0].Codes.Has(CodeNotCovered) {
+		t.Error(reasons(w.last[0]))
+	}
+
+	w = newWorld(t, r)
+	w.step(0, ListOffered{List: a, By: "ana"})
+	w.step(0, ListConfirmed{Authority: "orbital-desk", ID: "a", Digest: a.Digest(), By: "bo"})
+	w.mustOpen()
+	wide, err := Index(&ListText{
+		ID: "wide", Authority: "orbital-desk", Issued: w.at.Add(time.Second), Replaces: []ListID{"a"}, Covers: span.Span{From: w.at.Add(-time.Hour), Until: w.at.Add(10 * time.Hour)}, UnlistedOpen: true, Digest: Digest{7},
+		Regions: []Region{{ID: "r", Shape: ICRSCone, Direction: w.dir, Radius: s1.Degree}},
+		Windows: []Window{{Region: 0, From: w.at.Add(-time.Minute).UnixNano(), Until: w.at.Add(time.Minute).UnixNano()}},
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	d := w.step(100*time.Millisecond, ListOffered{List: wide, By: "ana"})
+	if d.Open || !d.Codes.Has(CodeListedClosure) {
+		t.Errorf("a waiting list's closed window: open %v", d.Open)
+	}
+	if e := w.s.Book().Find("orbital-desk", "a"); e.Status != ListInForce {
+		t.Errorf("what it would replace is %v", e.Status)
+	}
+	w.step(100*time.Millisecond, ListConfirmed{Authority: "orbital-desk", ID: "wide", Digest: wide.Digest(), By: "bo"})
+	if e := w.s.Book().Find("orbital-desk", "a"); e.Status != ListReplaced {
+		t.Errorf("what it replaced is %v", e.Status)
+	}
+}
