@@ -1,6 +1,7 @@
 package wire
 
 import (
+	"crypto/ed25519"
 	"encoding/json"
 	"math"
 	"testing"
@@ -122,6 +123,35 @@ func BenchmarkRecord(b *testing.B) {
 		b.ReportAllocs()
 		for b.Loop() {
 			_, _ = DecodeBody(kind, text, Resolver{})
+		}
+	})
+}
+
+// BenchmarkPermit writes a permit beside encoding/json, signs it and verifies it.
+func BenchmarkPermit(b *testing.B) {
+	p := signed(openPermit())
+	key := testKey()
+	b.Run("write", func(b *testing.B) {
+		var dst []byte
+		b.ReportAllocs()
+		for b.Loop() {
+			dst = AppendPermit(dst[:0], &p)
+		}
+		type plain Permit
+		ours, rival := quickest(func() { dst = AppendPermit(dst[:0], &p) }, func() { _, _ = json.Marshal(plain(p)) })
+		b.ReportMetric(rival/ours, "x-encoding/json")
+	})
+	b.Run("sign", func(b *testing.B) {
+		for b.Loop() {
+			_ = Sign(PayloadOf(&p), "k1", func(in []byte) []byte { return ed25519.Sign(key, in) })
+		}
+	})
+	b.Run("verify", func(b *testing.B) {
+		public := publicKey()
+		for b.Loop() {
+			if _, err := VerifyPermit(p.Signed, public); err != nil {
+				b.Fatal(err)
+			}
 		}
 	})
 }
