@@ -69,6 +69,8 @@ type Engine struct {
 	book     closures.Book
 	holds    []closures.HoldPlaced
 	nights   []*sky.Night
+	known    *closures.Known
+	knownAt  time.Duration
 	version  uint64           // of what is durable
 	kept     closures.Durable // as of version
 	seq      uint64           // newest number given
@@ -85,13 +87,17 @@ type Engine struct {
 
 	own        []closures.Body // facts of the engine's own for the next turn
 	carried    []pending       // of a batch that was lost to a panic
+	deferred   []pending       // devices' words that contradict those of the last turn
+	says       map[deviceSays]uint8
 	condition  Condition
 	recordTold time.Duration
 	clockSaid  ClockReport
 	clockTold  time.Duration
 	tellAnew   bool // clock and record are told in this turn whether due or not
 	reanchor   bool
+	moved      bool // the site's place or the Earth's rotation was set anew
 	lost       bool // an entry was lost and the core has not been told
+	torn       bool // an entry was lost since the record last began
 	started    bool
 	stopping   bool
 	panics     int // turns in a row
@@ -100,6 +106,8 @@ type Engine struct {
 	told    time.Duration // when watchers were last told
 	facts   []closures.Fact
 	waits   []*waiter
+
+	beforeStep func() // a test's way to make the core panic
 }
 
 // New makes an engine whose view is shuttered. It fails for rules that cannot
@@ -128,7 +136,7 @@ func New(opt Options) (*Engine, error) {
 	if err != nil {
 		return nil, err
 	}
-	e := &Engine{opt: opt, ripe: make(chan struct{}, 1), seq: opt.After, at: opt.Boot.At}
+	e := &Engine{opt: opt, says: map[deviceSays]uint8{}, ripe: make(chan struct{}, 1), seq: opt.After, at: opt.Boot.At}
 	e.in = newIntake(&e.stats)
 	_, e.boot = opt.Clock.Read()
 	e.take(state, "")
@@ -141,12 +149,13 @@ func New(opt Options) (*Engine, error) {
 func (e *Engine) take(s *closures.State, cause string) {
 	e.state = s
 	e.kept, e.version = s.Durable()
+	e.known, e.knownAt = s.Known(e.at), e.boot
 	e.rules, e.foreseen, e.book, e.holds = s.Rules(), s.Foreseen(), s.Book(), s.Holds()
 	e.in.setRules(e.rules)
 	e.gates = make([]gate, len(e.rules.Beams))
 	e.recorded = make([]closures.Decision, len(e.rules.Beams))
 	e.begun = &Begun{Boot: closures.Boot{ID: e.opt.Boot.ID, At: e.at}, Build: e.opt.Build, Rules: e.rules, Cause: cause}
-	e.tellAnew = true
+	e.tellAnew, e.torn = true, false
 	e.own = e.own[:0]
 	for _, n := range e.nights {
 		e.own = append(e.own, closures.NightReady{Night: n})

@@ -64,7 +64,7 @@ func (e *Engine) record(entries []Entry, urgent bool, v *View) *View {
 	e.lost = err != nil
 	if err != nil {
 		recorded = 0
-		e.keptDue = true
+		e.torn, e.keptDue = true, true
 		e.stats.lost.Add(uint64(len(entries)))
 		if !told {
 			e.opt.Report(err)

@@ -156,7 +156,7 @@ func (e *Engine) giveUp(err error) error {
 func (e *Engine) end() {
 	e.settle(e.opt.Record.Condition())
 	b := e.in.take(e.boot)
-	for _, lane := range [...][]pending{e.carried, b.people, b.devices, b.latest} {
+	for _, lane := range [...][]pending{e.carried, e.deferred, b.people, b.devices, b.latest} {
 		for i := range lane {
 			if w := lane[i].wait; w != nil {
 				w.tell(Result{}, errStopping)

@@ -25,7 +25,8 @@ func (s *Stepper) Turn() (*View, error) {
 	for range mostTurns {
 		again, err := s.e.turn()
 		if err != nil {
-			return s.e.View(), s.e.giveUp(err)
+			err = s.e.giveUp(err)
+			return s.e.View(), err
 		}
 		if !again {
 			break

@@ -28,9 +28,17 @@ func (e *Engine) turn() (again bool, err error) {
 		}
 	}
 	e.at, e.boot = wall, boot
-	if e.lost && !e.opt.Record.Condition().Gap {
+	cause := ""
+	switch {
+	case e.moved:
+		// Tracks and nights belong to the old place.
+		cause, e.moved, e.nights = "the site's place was set anew", false, nil
+	case e.torn && !e.opt.Record.Condition().Gap:
 		// What was lost cannot be replayed: the record begins anew.
-		if err := e.anew("entries of the record were lost"); err != nil {
+		cause = "entries of the record were lost"
+	}
+	if cause != "" {
+		if err := e.anew(cause); err != nil {
 			return false, err
 		}
 	}
@@ -39,9 +47,11 @@ func (e *Engine) turn() (again bool, err error) {
 	entries := e.beginEntries()
 	own := e.ownFacts(boot)
 	batch := e.in.take(boot)
+	e.part(&batch)
 	e.number(own, &batch, wall, boot)
 	tick := e.seq
-	if again, err, failed := e.decide(entries, &batch, wall, boot, tick); failed {
+	again, err, failed := e.decide(entries, &batch, wall, boot, tick)
+	if failed {
 		return again, err
 	}
 	_, after := e.opt.Clock.Read()
@@ -50,7 +60,7 @@ func (e *Engine) turn() (again bool, err error) {
 	if e.opt.Watchdog != nil && !e.lost {
 		e.opt.Watchdog()
 	}
-	return batch.more, nil
+	return again || batch.more, nil
 }
 
 // number makes facts of the batch: the engine's own, people's, devices', the
@@ -128,10 +138,11 @@ func (e *Engine) decide(entries []Entry, b *batch, wall time.Time, boot time.Dur
 		}
 		e.tally.add(d)
 	}
-	if e.stopping {
+	if over := e.overruled(); over != "" {
 		for i := range beams {
-			beams[i] = BeamView{Decision: shuttered(e.rules, out[i].Beam, tick, wall, closures.CodeStarting, "the service is stopping")}
+			beams[i] = BeamView{Decision: shuttered(e.rules, out[i].Beam, tick, wall, closures.CodeStarting, over)}
 		}
+		clear(e.gates)
 	}
 	v := e.publish(wall, boot, tick, beams)
 
@@ -142,11 +153,21 @@ func (e *Engine) decide(entries []Entry, b *batch, wall time.Time, boot time.Dur
 	v = e.record(entries, urgent, v)
 	e.announce(before, v)
 	if e.reanchor && e.opt.Reanchor != nil {
-		e.reanchor = false
-		e.opt.Reanchor()
-		return true, nil, false
+		e.opt.Reanchor() // the step is told: the next turn may lie anywhere
 	}
-	return false, nil, false
+	return e.moved, nil, false
+}
+
+// overruled says why every beam is published as shuttered whatever was
+// decided; empty when it is not.
+func (e *Engine) overruled() string {
+	switch {
+	case e.stopping:
+		return "the service is stopping"
+	case e.moved:
+		return "the site's place was set anew"
+	}
+	return ""
 }
 
 // step runs the core and catches its panic.
@@ -156,6 +177,9 @@ func (e *Engine) step(wall time.Time, boot time.Duration) (out []closures.Decisi
 			caught = fmt.Errorf("deciding facts %d to %d: %v\n%s", e.facts[0].Seq, e.seq, r, debug.Stack())
 		}
 	}()
+	if e.beforeStep != nil {
+		e.beforeStep()
+	}
 	out = e.state.Step(e.facts, wall, make([]closures.Decision, 0, len(e.rules.Beams)))
 	_, after := e.opt.Clock.Read()
 	e.stats.turn(len(e.facts), after-boot)
@@ -187,7 +211,11 @@ func (e *Engine) refresh() {
 			break
 		}
 	}
-	if e.state.DurableVersion() == e.version {
+	changed := e.state.DurableVersion() != e.version
+	if changed || e.boot-e.knownAt >= viewEvery {
+		e.known, e.knownAt = e.state.Known(e.at), e.boot
+	}
+	if !changed {
 		return
 	}
 	e.kept, e.version = e.state.Durable()
@@ -205,6 +233,8 @@ func (e *Engine) newRules(r *closures.Rules) {
 			}
 		}
 	}
+	was := e.rules.Site
+	e.moved = r.Site.Position != was.Position || r.Site.UT1 != was.UT1
 	e.rules, e.gates, e.recorded = r, gates, recorded
 	e.in.setRules(r)
 	e.nights0.forget()

@@ -28,6 +28,8 @@ type View struct {
 	Nights   []*sky.Night
 	Durable  uint64 // rises with each change of lists, holds, latches and sightings
 
+	Known *closures.Known // for people to look at; at most viewEvery older than At
+
 	Clock  ClockReport
 	Record Condition
 
@@ -80,7 +82,7 @@ func (e *Engine) publish(wall time.Time, boot time.Duration, seq uint64, beams [
 	old := e.view.Load()
 	v := &View{
 		At: wall, Boot: boot, BootID: e.opt.Boot.ID, Number: 1, Seq: seq, Beams: beams, Durable: e.version,
-		Rules: e.rules, Foreseen: e.foreseen, Book: e.book, Holds: e.holds, Nights: e.nights,
+		Rules: e.rules, Foreseen: e.foreseen, Book: e.book, Holds: e.holds, Nights: e.nights, Known: e.known,
 		Clock: e.clockSaid, Record: e.condition, Started: e.started, Simulated: e.opt.Simulated,
 	}
 	for i := range beams {
