@@ -15,6 +15,7 @@ type cell struct {
 	kind kind
 	text []byte
 	at   place
+	when *instant // of a moment
 }
 
 // kind is what a format says of a scalar.
@@ -29,6 +30,7 @@ const (
 	null            // JSON's null, or a YAML scalar that is one
 	nested          // an object or an array where a scalar belongs
 	reported        // anything that its reader has reported already
+	moment          // a time that a layout has read
 )
 
 func (c cell) set() bool { return c.kind != absent }
@@ -89,6 +91,9 @@ func (d *draft) name(c cell, at place, what string) ([]byte, bool) {
 }
 
 func (d *draft) time(c cell, at place, what string) (instant, bool) {
+	if c.kind == moment {
+		return *c.when, true
+	}
 	t, ok := d.wording(c, at, what)
 	if !ok {
 		return instant{}, false

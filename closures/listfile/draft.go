@@ -17,12 +17,13 @@ type draft struct {
 	text    closures.ListText // what is good so far; Window.Region indexes names until finish
 	settled bool              // the head was checked, and windows can be held against the coverage
 
-	names  map[string]int32
-	byName []named
-	seen   int  // windows, good or bad
-	lost   bool // some line could not be told for what it was, so that nothing follows from what is missing
-	points int
-	line   func(n int) []byte // the text of a line read earlier, where it is still at hand
+	names       map[string]int32
+	byName      []named
+	seen        int  // windows, good or bad
+	lost        bool // some line could not be told for what it was, so that nothing follows from what is missing
+	dropRepeats bool // a window that stands twice is kept once, rather than refused
+	points      int
+	line        func(n int) []byte // the text of a line read earlier, where it is still at hand
 }
 
 // named is what is known of one region's name.

@@ -134,11 +134,33 @@ func (d *draft) repeated() {
 	if !slices.IsSortedFunc(order, compare) {
 		slices.SortFunc(order, func(a, b int32) int { return cmp.Or(compare(a, b), cmp.Compare(a, b)) })
 	}
+	twice := make(map[int32]bool)
 	for i := 1; i < len(order); i++ {
-		if a, b := order[i-1], order[i]; w[a].Region >= 0 && compare(a, b) == 0 {
-			d.addf(d.windowPlace(int(b), -1), "take one of them out, or tell them apart by ref", "the window stands on line %d already", d.text.Lines[a])
+		a, b := order[i-1], order[i]
+		if w[a].Region < 0 || compare(a, b) != 0 {
+			continue
+		}
+		if d.dropRepeats {
+			twice[b] = true
+			continue
+		}
+		d.addf(d.windowPlace(int(b), -1), "take one of them out, or tell them apart by ref", "the window stands on line %d already", d.text.Lines[a])
+	}
+	if len(twice) > 0 {
+		d.drop(twice)
+	}
+}
+
+// drop takes windows out.
+func (d *draft) drop(out map[int32]bool) {
+	kept := 0
+	for i := range d.text.Windows {
+		if !out[int32(i)] {
+			d.text.Windows[kept], d.text.Lines[kept] = d.text.Windows[i], d.text.Lines[i]
+			kept++
 		}
 	}
+	d.text.Windows, d.text.Lines = d.text.Windows[:kept], d.text.Lines[:kept]
 }
 
 // windowPlace returns where window i stood. name is the index of its region's

@@ -9,12 +9,14 @@ import (
 // Format is the form a closure list is written in.
 type Format uint8
 
-// The native formats. Auto looks at the text.
+// The native formats. Auto looks at the text. Text is what a layout reads, and
+// Read does not.
 const (
 	Auto Format = iota
 	YAML
 	JSON
 	CSV
+	Text
 )
 
 // String returns the format's word.
@@ -26,6 +28,8 @@ func (f Format) String() string {
 		return "json"
 	case CSV:
 		return "csv"
+	case Text:
+		return "text"
 	}
 	return "auto"
 }

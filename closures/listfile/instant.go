@@ -7,27 +7,29 @@ import (
 	"beamward/closures/wire"
 )
 
-// instant is a time as a list gives it. POSIX time has no name for the inside
-// of a leap second: a clock may show the second before once more. So an instant
-// inside one has two values a second apart, and whoever uses it takes the safe
-// one.
+// instant is a time as a list gives it: between two milliseconds, and most
+// often on one. POSIX time has no name for the inside of a leap second, since a
+// clock may then show the second before once more; and lists keep nothing finer
+// than a millisecond. Whoever uses an instant takes the safe end.
 type instant struct {
-	early, late int64 // Unix nanoseconds; equal but inside a leap second
-	order       int64 // of instants inside one leap second
+	early, late int64 // Unix nanoseconds
+	order       int64 // of the very instant, for telling apart two between the same milliseconds
 }
 
-func (i instant) leap() bool { return i.early != i.late }
+func (i instant) exact() bool { return i.early == i.late }
 
-// before compares as the list meant it: the leap second after all of the
-// second before, and before all of the one after.
+// before compares as the list meant it.
 func (i instant) before(o instant) bool {
+	if i.exact() && o.exact() {
+		return i.early < o.early
+	}
 	if i.late != o.late {
 		return i.late < o.late
 	}
-	if i.leap() && o.leap() {
-		return i.order < o.order
+	if i.exact() || o.exact() {
+		return !i.exact()
 	}
-	return i.leap() && !o.leap()
+	return i.order < o.order
 }
 
 // The years that a list may speak of, 2000 to 2199 in Unix nanoseconds: within
@@ -64,14 +66,20 @@ func parseInstant(text []byte) (at instant, cause, mend string) {
 		return instant{}, "is out of range", yearsMend
 	}
 	if !leap {
-		return instant{early: ns, late: ns}, "", ""
+		return instant{early: ns, late: ns, order: ns}, "", ""
 	}
+	return leapInstant(ns)
+}
+
+// leapInstant returns the instant inside the leap second that follows the
+// second which ns, of the same fraction, lies in.
+func leapInstant(ns int64) (at instant, cause, mend string) {
 	second := ns - ns%int64(time.Second)
 	next := time.Unix(0, second+int64(time.Second)).UTC()
 	if next.Hour() != 0 || next.Minute() != 0 || next.Day() != 1 {
 		return instant{}, "is no leap second", leapMend
 	}
-	return instant{early: second, late: second + int64(time.Second), order: ns}, "", ""
+	return instant{early: second, late: second + int64(time.Second), order: ns + int64(time.Second)}, "", ""
 }
 
 // appendTime appends Unix nanoseconds in the canonical way: the fraction only

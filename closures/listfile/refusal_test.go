@@ -143,7 +143,7 @@ func TestMalformed(t *testing.T) {
 		{"track with one time twice", YAML, "at: 2031-02-14T03:00:00.250Z", "at: 2031-02-14T02:00:00Z", "15: the track's points are not in order of time"},
 		{"track leaps", JSON, `"ra_deg":0.05,"dec_deg":5.02`, `"ra_deg":180,"dec_deg":5.02`, "7: the track's points are 90 degrees or more apart"},
 		{"point without dec", YAML, "ra_deg: 0.05, dec_deg: 5.02", "ra_deg: 0.05", "15: dec_deg is missing"},
-		{"point on a leap second", CSV, "point,2031-02-14T03:00:00.250Z", "point,2031-01-31T23:59:60Z", "17: the point stands inside a leap second"},
+		{"point on a leap second", CSV, "point,2031-02-14T03:00:00.250Z", "point,2031-01-31T23:59:60Z", "17: the point stands inside a leap second, or between milliseconds"},
 		{"point of a cone", CSV, "f-101,,,,,,,,,,closed,2031-02-14T03:10:02Z,2031-02-14T03:10:41Z,A-17", "f-101,,1,2,,,,,,,point,2031-02-14T03:10:02Z,,", "20: only a track has points"},
 		{"window beyond its track", YAML, "{region: comet, closed: {from: 2031-02-14T02:00:00Z", "{region: comet, closed: {from: 2031-02-14T01:59:59Z", "24: the window reaches beyond the points of its track, where the region is nowhere"},
 		{"track throughout, too short", CSV, "comet,track,,,0.1,,,,,,,,,", "comet,track,,,0.1,,,,,closed,,,,", "15: the region has windows and throughout\n15: the track holds throughout, and its points do not reach over covers"},

@@ -136,8 +136,8 @@ func (d *draft) point(points []closures.AimPoint, p *pointText) (_ []closures.Ai
 	if !(ok1 && ok2 && ok3) {
 		return points, false
 	}
-	if when.leap() {
-		d.add(p.when.at, "the point stands inside a leap second", "give the point another time")
+	if !when.exact() {
+		d.add(p.when.at, "the point stands inside a leap second, or between milliseconds", "give the point another time")
 		return points, false
 	}
 	next := closures.AimPoint{At: time.Unix(0, when.early).UTC(), Direction: equator(ra, dec)}
