@@ -7,6 +7,7 @@ import (
 	"math/rand/v2"
 	"runtime"
 	"runtime/debug"
+	"strings"
 	"sync"
 	"testing"
 	"time"
@@ -67,25 +68,37 @@ func heapPeak(f func()) (peak uint64) {
 	return peak
 }
 
-func benchmarkRead(b *testing.B, n int, format Format, write func(io.Writer, *closures.ListText) error, budget string) {
-	list := generated(n)
+// textOf returns a list of n windows as a writer writes it.
+func textOf(b *testing.B, list *closures.ListText, write func(io.Writer, *closures.ListText) error) []byte {
 	var text bytes.Buffer
 	if err := write(&text, list); err != nil {
 		b.Fatal(err)
 	}
-	list = nil
-	b.SetBytes(int64(text.Len()))
+	return text.Bytes()
+}
+
+// benchmarkLoad reads a text until it is ready for use, and prints the budget.
+func benchmarkLoad(b *testing.B, what string, text []byte, budget string, load func(io.Reader) error) {
+	b.SetBytes(int64(len(text)))
 	b.ReportAllocs()
 	b.ResetTimer()
 	for b.Loop() {
-		if _, _, err := Load(bytes.NewReader(text.Bytes()), format, Limits{}); err != nil {
+		if err := load(bytes.NewReader(text)); err != nil {
 			b.Fatal(err)
 		}
 	}
 	b.StopTimer()
-	peak := heapPeak(func() { _, _, _ = Load(bytes.NewReader(text.Bytes()), format, Limits{}) })
+	peak := heapPeak(func() { _ = load(bytes.NewReader(text)) })
 	b.ReportMetric(float64(peak)/mebibyte, "MiB-peak")
-	b.Logf("%d windows as %v: %.2f s; %.0f MiB at most on the heap; budget %s", n, format, b.Elapsed().Seconds()/float64(b.N), float64(peak)/mebibyte, budget)
+	b.Logf("%s: %.2f s; %.0f MiB at most on the heap; budget %s", what, b.Elapsed().Seconds()/float64(b.N), float64(peak)/mebibyte, budget)
+}
+
+func benchmarkRead(b *testing.B, n int, format Format, write func(io.Writer, *closures.ListText) error, budget string) {
+	text := textOf(b, generated(n), write)
+	benchmarkLoad(b, fmt.Sprintf("%d windows as %v", n, format), text, budget, func(r io.Reader) error {
+		_, _, err := Load(r, format, Limits{})
+		return err
+	})
 }
 
 func BenchmarkReadCSV1M(b *testing.B) {
@@ -98,4 +111,32 @@ func BenchmarkReadJSON1M(b *testing.B) {
 
 func BenchmarkReadYAML50k(b *testing.B) {
 	benchmarkRead(b, 50_000, YAML, WriteYAML, "3 s")
+}
+
+// BenchmarkReadCSV1MUnordered reads windows in no order, which have to be
+// sorted.
+func BenchmarkReadCSV1MUnordered(b *testing.B) {
+	list := generated(1_000_000)
+	rnd := rand.New(rand.NewPCG(2, 3))
+	rnd.Shuffle(len(list.Windows), func(i, j int) { list.Windows[i], list.Windows[j] = list.Windows[j], list.Windows[i] })
+	benchmarkLoad(b, "1000000 windows as csv in no order", textOf(b, list, WriteCSV), "3 s, 600 MiB", func(r io.Reader) error {
+		_, _, err := Load(r, CSV, Limits{})
+		return err
+	})
+}
+
+// BenchmarkLayout reads the invented table made long.
+func BenchmarkLayout(b *testing.B) {
+	l := compiled(b, file(b, "table.yaml"))
+	lines := strings.SplitAfter(string(file(b, "table.txt")), "\n")
+	var rows strings.Builder
+	const n = 50_000
+	for i := range n {
+		fmt.Fprintf(&rows, " s-%-5d |  10.006667 | +02.2000 |  180 | %02d:%02d:%02d     |    39 | A%d\n", i/20, 21+i%20/10, i%10*5, i%7, i)
+	}
+	text := strings.Join(lines[:9], "") + rows.String() + fmt.Sprintf("rows %d\n", n)
+	benchmarkLoad(b, fmt.Sprintf("%d windows through a layout", n), []byte(text), "none is set", func(r io.Reader) error {
+		_, _, err := l.Load(r, Limits{})
+		return err
+	})
 }

@@ -82,6 +82,7 @@ type Limits struct {
 const (
 	yamlBytes   = 16 << 20
 	yamlWindows = 50_000
+	yamlItems   = 1_000_000 // bounds the memory of the tree; 50,000 windows take some 300,000
 	mebibyte    = 1 << 20
 )
 

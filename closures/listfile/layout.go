@@ -142,7 +142,8 @@ type rule struct {
 // pattern is an expression with the values that its groups give.
 type pattern struct {
 	re     *regexp.Regexp
-	weight int // instructions of its program
+	prefix string // what every line that it matches begins with
+	weight int    // instructions of its program
 	values []value
 }
 
@@ -199,5 +200,5 @@ const (
 	maxExamples   = 10     // of one rule
 	layoutLine    = 8192   // bytes of one line, joined
 	layoutBytes   = 16 << 20
-	maxWork       = 4_000_000_000 // bytes times instructions in one reading
+	maxWork       = 10_000_000_000 // bytes times instructions in one reading, some 5 s
 )

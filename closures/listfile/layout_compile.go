@@ -281,6 +281,9 @@ func (c *compiler) pattern(expression string, at place, allowed ...string) (p pa
 		return p
 	}
 	p.re, p.weight = re, len(prog.Inst)
+	if bare, err := regexp.Compile(expression); err == nil {
+		p.prefix, _ = bare.LiteralPrefix()
+	}
 	if c.l.weight += p.weight; c.l.weight > maxWeights && !c.d.full {
 		c.d.stop(at, fmt.Sprintf("the layout's expressions are too heavy together: more than %d steps", maxWeights), "write fewer or smaller ones")
 	}

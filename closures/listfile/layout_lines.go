@@ -238,7 +238,9 @@ func (g *reading) windowLine(r *rule, all []found, at place) {
 	}
 	rest := []byte(spans.words)
 	for len(rest) > 0 {
-		g.work += int64(len(rest)) * int64(r.each.weight)
+		if !g.spend(r.each, len(rest)) {
+			return
+		}
 		m := r.each.re.FindSubmatchIndex(rest)
 		if m == nil || m[1] == 0 {
 			g.d.addf(at, "correct the layout, or ask for the list again", "%s cannot be read as a window", quoted(rest))

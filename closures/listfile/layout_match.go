@@ -45,19 +45,24 @@ func (g *reading) keep(j *joint, line []byte) (kept []byte, ok bool) {
 	return line[m[at]:m[at+1]], true
 }
 
-// try matches a pattern and counts the work, which is bounded: a text that is
-// too long for the layout's expressions is refused rather than read for hours.
+// try matches a pattern against a whole line.
 func (g *reading) try(p *pattern, line []byte) []int {
-	if len(line) > layoutLine {
-		return nil
-	}
-	if g.work += int64(len(line)+1) * int64(p.weight); g.work > maxWork {
-		if !g.d.full {
-			g.d.stop(place{}, "the text is too long for the layout's expressions", "simplify the layout, or split the text")
-		}
+	if len(line) > layoutLine || len(line) < len(p.prefix) || string(line[:len(p.prefix)]) != p.prefix || !g.spend(p, len(line)) {
 		return nil
 	}
 	return p.re.FindSubmatchIndex(line)
+}
+
+// spend counts the work of a match, which is bounded: a text that is too long
+// for the layout's expressions is refused rather than read for hours.
+func (g *reading) spend(p *pattern, length int) bool {
+	if g.work -= int64(length+1) * int64(p.weight); g.work >= 0 {
+		return true
+	}
+	if !g.d.full {
+		g.d.stop(place{}, "the text is too long for the layout's expressions", "simplify the layout, or split the text")
+	}
+	return false
 }
 
 // rule returns the first rule that takes the line, with its match.

@@ -84,7 +84,7 @@ type reading struct {
 	forward int     // days passed since the date, where starts never go back
 	last    int64   // the start before, for that
 	taken   []int   // lines each rule has taken
-	work    int64
+	work    int64   // that may still be done
 	regions map[string]*described
 	tracks  []*described
 	observe func(Taken)
@@ -102,7 +102,7 @@ type described struct {
 const topSection = "top"
 
 func newReading(l *Layout, d *draft, lines [][]byte) *reading {
-	g := &reading{l: l, d: d, lines: lines, section: topSection, taken: make([]int, len(l.rules)), regions: map[string]*described{}}
+	g := &reading{l: l, d: d, lines: lines, section: topSection, work: maxWork, taken: make([]int, len(l.rules)), regions: map[string]*described{}}
 	d.line = func(n int) []byte {
 		if n < 1 || n > len(lines) {
 			return nil

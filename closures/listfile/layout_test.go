@@ -259,13 +259,20 @@ func TestALayoutReadsWhatIsWritten(t *testing.T) {
 	})
 }
 
+// TestWorkIsBounded reads with a small allowance, by a rule and by each.
 func TestWorkIsBounded(t *testing.T) {
 	heavy := strings.Replace(rowLayout, "lines:", "lines:\n  - {is: ignore, match: '(?:.{0,200}x){4}y', example: xxxxy}", 1)
-	l := compiled(t, []byte(heavy))
-	text := strings.Repeat(strings.Repeat("x", 4000)+"\n", 1000)
-	_, _, err := l.Read(strings.NewReader(text), Limits{})
-	var r *Refusal
-	if !errors.As(err, &r) || !slices.ContainsFunc(r.Lines, func(e LineError) bool { return strings.Contains(e.Cause, "too long for the layout") }) {
-		t.Errorf("%v", err)
+	for _, c := range []struct{ layout, line string }{
+		{heavy, strings.Repeat("x", 4000)},
+		{string(file(t, "report.yaml")), "   clear  " + strings.Repeat("18:00:00-03:10:02 ", 400) + "1"},
+	} {
+		d := newDraft(Limits{}.filled())
+		g := newReading(compiled(t, []byte(c.layout)), d, [][]byte{[]byte(c.line)})
+		g.section, g.region, g.work = "fields", "K-17", 300_000
+		g.date = written{has: hasYear | hasDay, year: 2031, month: 2, day: 14}
+		g.all()
+		if r := d.refusal(); !slices.ContainsFunc(r.Lines, func(e LineError) bool { return strings.Contains(e.Cause, "too long for the layout") }) {
+			t.Errorf("%+v", r)
+		}
 	}
 }

@@ -99,9 +99,11 @@ func TestYAMLOfTooManyWindowsSaysWhatToUse(t *testing.T) {
 	if r.Total != 1 || !strings.Contains(r.Lines[0].Mend, "CSV") {
 		t.Errorf("%+v", r)
 	}
-	r, _ = refused(t, "# "+strings.Repeat("x", yamlBytes), YAML, Limits{})
-	if r.Total != 1 || !strings.Contains(r.Lines[0].Mend, "CSV") {
-		t.Errorf("%+v", r)
+	for _, text := range []string{"# " + strings.Repeat("x", yamlBytes), "[" + strings.Repeat("a,", yamlItems)} {
+		r, _ = refused(t, text, YAML, Limits{})
+		if r.Total != 1 || !strings.Contains(r.Lines[0].Mend, "CSV") {
+			t.Errorf("%+v", r)
+		}
 	}
 }
 

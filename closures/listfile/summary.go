@@ -78,7 +78,9 @@ func Summarise(t *closures.ListText) Summary {
 func byRegion(t *closures.ListText) [][]int32 {
 	counts := make([]int, len(t.Regions))
 	for i := range t.Windows {
-		counts[t.Windows[i].Region]++
+		if r := t.Windows[i].Region; r >= 0 && int(r) < len(counts) {
+			counts[r]++
+		}
 	}
 	all := make([]int32, len(t.Windows))
 	of := make([][]int32, len(t.Regions))
@@ -86,8 +88,9 @@ func byRegion(t *closures.ListText) [][]int32 {
 		of[i], all = all[:0:n], all[n:]
 	}
 	for i := range t.Windows {
-		r := t.Windows[i].Region
-		of[r] = append(of[r], int32(i))
+		if r := t.Windows[i].Region; r >= 0 && int(r) < len(of) {
+			of[r] = append(of[r], int32(i))
+		}
 	}
 	return of
 }

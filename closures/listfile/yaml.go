@@ -39,6 +39,16 @@ func readYAML(d *draft, r io.Reader, report *Report) error {
 	if !ok {
 		return nil
 	}
+	items := 0
+	for _, c := range all {
+		if c == ',' || c == '{' || c == '[' || c == '\n' {
+			items++
+		}
+	}
+	if items > yamlItems {
+		d.stop(place{}, "a YAML list has at most 1,000,000 lines, braces, brackets and commas", d.smaller)
+		return nil
+	}
 	y := &yamlReader{d: d, lines: lines}
 	d.line = y.lineText
 	root := y.parse(all)
@@ -117,6 +127,7 @@ func (y *yamlReader) syntax(err error) {
 		if parser.MatchString(message) { // the library counts these from 0
 			at.line++
 		}
+		at.line = min(at.line, len(y.lines)) // the end of the text
 		at.text = y.lineText(at.line)
 	}
 	y.d.stop(at, "not well-formed YAML: "+shown([]byte(message), 120), "correct it on this line or a later one; nothing was read")
