@@ -26,8 +26,15 @@ import (
 //
 // window_count and digest stand in it exactly when the list had proved them,
 // so that reading it back gives the same list with the same proof. Digest
-// leaves both out.
+// leaves both out. It can be half as long again as the text it came from, so
+// read it back under the limits of Recorded.
+//
+// Canonical and the other writers write nothing of a list that its text could
+// not give back, which Read never makes, and return an error.
 func Canonical(w io.Writer, t *closures.ListText) error {
+	if err := writable(t); err != nil {
+		return err
+	}
 	return writeCanonical(w, t, t.Proof)
 }
 

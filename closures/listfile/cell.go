@@ -2,6 +2,7 @@ package listfile
 
 import (
 	"fmt"
+	"strings"
 	"unicode"
 	"unicode/utf8"
 
@@ -206,20 +207,23 @@ func (d *draft) reference(c cell) (string, bool) {
 	return string(t), true
 }
 
-func printable(t []byte) bool {
-	for i := 0; i < len(t); {
-		if c := t[i]; c < utf8.RuneSelf {
-			if c < 0x20 || c == 0x7f {
-				return false
-			}
-			i++
-			continue
+func printable[T []byte | string](t T) bool {
+	for i := 0; i < len(t); i++ {
+		if t[i] >= utf8.RuneSelf {
+			return printableRunes(string(t[i:]))
 		}
-		r, n := utf8.DecodeRune(t[i:])
-		if r == utf8.RuneError && n == 1 || !unicode.IsPrint(r) {
+		if t[i] < 0x20 || t[i] == 0x7f {
 			return false
 		}
-		i += n
+	}
+	return true
+}
+
+func printableRunes(t string) bool {
+	for i, r := range t {
+		if !unicode.IsPrint(r) || r == utf8.RuneError && !strings.HasPrefix(t[i:], string(utf8.RuneError)) {
+			return false
+		}
 	}
 	return true
 }

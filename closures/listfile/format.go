@@ -2,6 +2,7 @@ package listfile
 
 import (
 	"bytes"
+	"math"
 	"path"
 	"strings"
 )
@@ -77,6 +78,12 @@ type Limits struct {
 	Windows int   // 2,000,000; YAML at most 50,000
 	Regions int   // 500,000
 	Points  int   // of all tracks together: 1,000,000
+}
+
+// Recorded returns the limits for reading back the canonical form of what was
+// accepted once.
+func Recorded() Limits {
+	return Limits{Bytes: math.MaxInt64, Windows: math.MaxInt32, Regions: math.MaxInt32, Points: math.MaxInt32}
 }
 
 const (

@@ -3,6 +3,8 @@ package listfile
 import (
 	"bytes"
 	"fmt"
+	"io"
+	"math"
 	"testing"
 	"time"
 	"unicode/utf8"
@@ -184,7 +186,7 @@ func TestRoundTrips(t *testing.T) {
 		if err := Canonical(&first, l); err != nil {
 			t.Fatal(err)
 		}
-		back, _, err := Load(bytes.NewReader(first.Bytes()), JSON, Limits{})
+		back, _, err := Load(bytes.NewReader(first.Bytes()), JSON, Recorded())
 		if err != nil {
 			t.Fatalf("%v\n%s", err, first.Bytes())
 		}
@@ -221,4 +223,34 @@ func TestRoundTrips(t *testing.T) {
 			t.Fatalf("the proof is lost: %s", diff)
 		}
 	})
+}
+
+// TestWhatNoTextCanHoldIsNotWritten damages a list in its own fields.
+func TestWhatNoTextCanHoldIsNotWritten(t *testing.T) {
+	for name, damage := range map[string]func(*closures.ListText){
+		"an id with a line end":         func(l *closures.ListText) { l.ID = "a\nb" },
+		"no authority":                  func(l *closures.ListText) { l.Authority = "" },
+		"a replaced list unnamed":       func(l *closures.ListText) { l.Replaces = []closures.ListID{""} },
+		"a beam with a comma":           func(l *closures.ListText) { l.Beams = []closures.BeamID{"a, b"} },
+		"issued between milliseconds":   func(l *closures.ListText) { l.Issued = l.Issued.Add(1) },
+		"coverage from year 1":          func(l *closures.ListText) { l.Covers.From = time.Time{} },
+		"a region without shape":        func(l *closures.ListText) { l.Regions[0].Shape = closures.NoShape },
+		"a region of no direction":      func(l *closures.ListText) { l.Regions[0].Direction.X = math.NaN() },
+		"a region without radius":       func(l *closures.ListText) { l.Regions[0].Radius = 0 },
+		"a box upside down":             func(l *closures.ListText) { l.Regions[2].Box.ElFrom = l.Regions[2].Box.ElTo },
+		"a point of no direction":       func(l *closures.ListText) { l.Regions[4].Points[0].Direction.Z = 2 },
+		"a window of no region":         func(l *closures.ListText) { l.Windows[0].Region = 6 },
+		"a window between milliseconds": func(l *closures.ListText) { l.Windows[0].Until-- },
+		"a ref with a line end":         func(l *closures.ListText) { l.Windows[0].Ref = "a\nb" },
+		"a ref that is not UTF-8":       func(l *closures.ListText) { l.Windows[0].Ref = "\xff" },
+	} {
+		l := mustRead(t, golden(t, YAML), YAML)
+		damage(l)
+		for _, write := range []func(io.Writer, *closures.ListText) error{Canonical, WriteJSON, WriteCSV, WriteYAML} {
+			var b bytes.Buffer
+			if err := write(&b, l); err == nil || b.Len() > 0 {
+				t.Errorf("%s is written: %v", name, err)
+			}
+		}
+	}
 }

@@ -12,6 +12,9 @@ import (
 
 // WriteJSON writes t in the native JSON form.
 func WriteJSON(w io.Writer, t *closures.ListText) error {
+	if err := writable(t); err != nil {
+		return err
+	}
 	out := sink{w: w}
 	b := appendHead(nil, t)
 	b = append(b, `,"window_count":`...)
@@ -42,6 +45,9 @@ func separator(i int) string {
 // WriteCSV writes t in the native CSV form: each region, with the points of
 // its track, before any window.
 func WriteCSV(w io.Writer, t *closures.ListText) error {
+	if err := writable(t); err != nil {
+		return err
+	}
 	out := sink{w: w}
 	b := []byte("# closure_list: 1\n# id: " + string(t.ID) + "\n# authority: " + string(t.Authority) + "\n# issued: ")
 	b = appendTime(b, t.Issued.UnixNano())

@@ -11,6 +11,9 @@ import (
 // WriteYAML writes t in the native YAML form. A list of more than 50,000
 // windows is written all the same, but cannot be read back.
 func WriteYAML(w io.Writer, t *closures.ListText) error {
+	if err := writable(t); err != nil {
+		return err
+	}
 	out := sink{w: w}
 	b := []byte("closure_list: 1\nid: " + yamlName(string(t.ID)) + "\nauthority: " + yamlName(string(t.Authority)) + "\nissued: ")
 	b = append(appendTime(b, t.Issued.UnixNano()), "\ncovers: "...)
