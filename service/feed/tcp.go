@@ -90,6 +90,9 @@ func ListenTCP(o TCPOptions) (*TCP, error) {
 	if err != nil {
 		return nil, fmt.Errorf("making the TCP feed at %s: %w", o.Listen, err)
 	}
+	if o.Admits == AdmitAnyone && !at.IP.IsLoopback() {
+		return nil, fmt.Errorf("making the TCP feed at %s: off the loopback interface anyone could speak here: admit by token or certificate", o.Listen)
+	}
 	l, err := net.ListenTCP("tcp", at)
 	if err != nil {
 		return nil, fmt.Errorf("making the TCP feed: %w: choose another address, or end what listens there", err)

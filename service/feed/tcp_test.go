@@ -464,6 +464,7 @@ func TestTCPOptionsThatCannotBe(t *testing.T) {
 		"bound to what is no name": {Options: Options{Intake: good.Intake, Clock: good.Clock, Bound: []Bound{{Name: "a b"}}}, Listen: "127.0.0.1:0", Admits: AdmitAnyone},
 		"bound twice":              {Options: Options{Intake: good.Intake, Clock: good.Clock, Bound: []Bound{{Name: "a"}, {Name: "a"}}}, Listen: "127.0.0.1:0", Admits: AdmitAnyone},
 		"no intake":                {Options: Options{Clock: good.Clock, Bound: good.Bound}, Listen: "127.0.0.1:0", Admits: AdmitAnyone},
+		"anyone, anywhere":         {Options: good, Listen: ":0", Admits: AdmitAnyone},
 		"no address":               {Options: good, Listen: "nowhere:nothing:", Admits: AdmitAnyone},
 	} {
 		if f, err := ListenTCP(o); err == nil {
