@@ -50,7 +50,7 @@ func New(o Options) (*API, error) {
 	a.hub.init(a)
 	a.router = chi.NewMux()
 	a.document = humachi.New(a.router, documentConfig(o.Version))
-	for _, rt := range slices.Concat(beamRoutes(), listRoutes(), holdRoutes(), factRoutes(), knownRoutes(), streamRoutes(), metaRoutes()) {
+	for _, rt := range slices.Concat(beamRoutes(), listRoutes(), holdRoutes(), factRoutes(), knownRoutes(), closureRoutes(), planRoutes(), recordRoutes(), streamRoutes(), metaRoutes()) {
 		a.mount(rt)
 	}
 	if o.Metrics != nil {

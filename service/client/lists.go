@@ -134,13 +134,7 @@ func (c *Client) List(ctx context.Context, authority closures.AuthorityID, id cl
 func (c *Client) ListText(ctx context.Context, authority closures.AuthorityID, id closures.ListID, format string, to io.Writer) error {
 	r := get("v1", "lists", string(authority), string(id))
 	r.accepts = mediaTypes[format]
-	out, err := c.do(ctx, r)
-	if err != nil {
-		return err
-	}
-	defer out.Body.Close()
-	_, err = io.Copy(to, out.Body)
-	return err
+	return c.copy(ctx, r, to)
 }
 
 var mediaTypes = map[string]string{"yaml": "application/yaml", "json": "application/json", "csv": "text/csv"}

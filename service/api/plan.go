@@ -1,0 +1,323 @@
+package api
+
+import (
+	"bufio"
+	"encoding/json"
+	"errors"
+	"net/http"
+	"time"
+
+	"beamward/closures"
+	"beamward/closures/plan"
+	"beamward/closures/wire"
+	"beamward/geometry/span"
+	"beamward/service/access"
+	"beamward/service/render"
+)
+
+const (
+	ndjson   = "application/x-ndjson"
+	calendar = "text/calendar"
+	csvType  = "text/csv"
+)
+
+var (
+	fromParam   = param{"from", "start; now where absent", timeOf()}
+	untilParam  = param{"until", "end, at most 14 days after from", timeOf()}
+	formatParam = param{"format", "instead of Accept", wordOf("json", "ndjson", "csv", "ics")}
+)
+
+var formats = map[string]string{"json": jsonType, "ndjson": ndjson, "csv": csvType, "ics": calendar}
+
+func planRoutes() []route {
+	return []route{
+		{method: "POST", path: "/v1/plan", id: "plan", summary: "When each target is allowed, and what stands against it; streamed in the order of the table", action: access.See, budget: forWriting,
+			query: []param{{"beam", "the beam to plan for", textOf(64)}, fromParam, untilParam, formatParam},
+			takes: []string{csvType, jsonType}, body: []targetBody{}, gives: []string{jsonType, ndjson, csvType, calendar}, answer: planDoc{}, errors: []int{404}, serve: (*call).plan},
+		{method: "GET", path: "/v1/beams/{beam}/outlook", id: "outlook", summary: "What is to come for the present aim", action: access.See,
+			query: []param{{"hours", "how far to look; 12 where absent", numberOf(0.01, 48)}}, answer: outlookDoc{}, serve: (*call).outlook},
+	}
+}
+
+// targetBody is one target of a table in JSON. Positions are ICRS.
+type targetBody struct {
+	Name     string   `json:"name" minLength:"1" maxLength:"128"`
+	RA       float64  `json:"ra_deg" minimum:"0" maximum:"360"`
+	Dec      float64  `json:"dec_deg" minimum:"-90" maximum:"90"`
+	PMRA     *float64 `json:"pm_ra_mas_yr,omitempty" doc:"times cos(dec)"`
+	PMDec    *float64 `json:"pm_dec_mas_yr,omitempty"`
+	Length   *float64 `json:"length_s,omitempty"`
+	Priority *float64 `json:"priority,omitempty"`
+}
+
+// planHead says what a plan is for. It stands before the targets.
+type planHead struct {
+	Beam        closures.BeamID `json:"beam"`
+	From        time.Time       `json:"from"`
+	Until       time.Time       `json:"until"`
+	RulesDigest string          `json:"rules_digest"`
+	ListsDigest string          `json:"lists_digest"`
+	LeftOut     []string        `json:"left_out" doc:"reasons that no plan can foresee"`
+	Notice      string          `json:"notice"`
+}
+
+type planDoc struct {
+	planHead
+	Targets []targetDoc `json:"targets"`
+}
+
+// targetDoc is what one target can have.
+type targetDoc struct {
+	Name     string         `json:"name"`
+	Allowed  []spanDoc      `json:"allowed"`
+	AllowedS float64        `json:"allowed_s"`
+	Blocked  []closureDoc   `json:"blocked"`
+	Cautions []wire.Caution `json:"cautions"`
+	Error    string         `json:"error,omitempty" doc:"it could not be planned, and is allowed at no time"`
+}
+
+func leftOut() []string { return (closures.AllCodes &^ closures.ForeseeableCodes()).Names() }
+
+func targetOf(name string, p *planned) targetDoc {
+	out := targetDoc{Name: name, Allowed: []spanDoc{}, Blocked: []closureDoc{}, Cautions: []wire.Caution{}}
+	if p.err != nil {
+		r, _ := refusalOf(p.err)
+		out.Error = r.Detail
+		return out
+	}
+	out.Allowed, out.AllowedS = spansOf(p.Spans), p.Spans.Total().Seconds()
+	for i := range p.Blocked {
+		it := itemOf("", &p.Blocked[i])
+		out.Blocked = append(out.Blocked, closureOf(&it))
+	}
+	for i := range p.Cautions {
+		out.Cautions = append(out.Cautions, wire.CautionOf(&p.Cautions[i]))
+	}
+	return out
+}
+
+// chosen is the media type of the answer: that of format=, where it is given.
+func (c *call) chosen(words ...string) (string, error) {
+	if !c.has("format") {
+		return c.gives, nil
+	}
+	word, err := c.word("format", words...)
+	return formats[word], err
+}
+
+func (c *call) plan() error {
+	media, err := c.chosen("json", "ndjson", "csv", "ics")
+	if err != nil {
+		return err
+	}
+	over, err := c.over(12 * time.Hour)
+	if err != nil {
+		return err
+	}
+	if !c.has("beam") {
+		return badQuery("beam", "it is not said for which beam", "give beam=")
+	}
+	v, _ := c.view()
+	beam := closures.BeamID(c.query.Get("beam"))
+	if v.Rules.Beam(beam) == nil {
+		return refuse(http.StatusNotFound, "no beam of this name is configured", "see /v1/beams for those that are")
+	}
+	give, err := c.slot()
+	if err != nil {
+		return err
+	}
+	defer give()
+	targets, err := plan.ReadTargets(c.body(c.api.limits.Targets, c.api.limits.LongTime))
+	if err != nil {
+		return targetsRefused(err)
+	}
+	p, err := c.prepare(v, beam, over)
+	if err != nil {
+		return err
+	}
+	head := planHead{
+		Beam: beam, From: over.From, Until: over.Until, RulesDigest: v.Rules.Digest.String(), ListsDigest: v.Book.Digest().String(), LeftOut: leftOut(), Notice: render.Notice,
+	}
+	out := planWriter{c: c, media: media, out: bufio.NewWriterSize(c.w, 32<<10), control: http.NewResponseController(c.w)}
+	out.begin(&head)
+	if err := each(p, targets, func(i int, t *planned) error { return out.target(&targets[i], t) }); err == nil {
+		err = out.end(len(targets))
+		if err == nil {
+			return nil
+		}
+	}
+	// The status is out. A cut connection tells the client that this is not all.
+	panic(http.ErrAbortHandler)
+}
+
+func targetsRefused(err error) error {
+	var bad *plan.Refusal
+	if !errors.As(err, &bad) {
+		return err
+	}
+	r := refuse(http.StatusUnprocessableEntity, bad.Error(), "")
+	r.Title = "targets refused"
+	for _, row := range bad.Rows {
+		r.Errors = append(r.Errors, wire.ProblemEntry{Line: row.Line, Detail: row.Cause, Mend: row.Mend, Text: row.Text})
+	}
+	return r
+}
+
+// planWriter writes a plan as it is made.
+type planWriter struct {
+	c       *call
+	media   string
+	out     *bufio.Writer
+	control *http.ResponseController
+	table   *render.Table
+	items   []render.Item // of a calendar, which is written at its end
+	count   int
+}
+
+func (w *planWriter) begin(head *planHead) {
+	w.c.w.Header().Set("Content-Type", w.media)
+	w.alive()
+	data, err := json.Marshal(head)
+	if err != nil {
+		panic(err) // it has no values that JSON cannot say
+	}
+	switch w.media {
+	case ndjson:
+		w.out.Write(append(data, '\n'))
+	case csvType:
+		w.out.WriteString("# " + render.Notice + "\n")
+		w.table = render.NewTable(w.out)
+		_ = w.table.Header()
+	case jsonType:
+		w.out.Write(append(data[:len(data)-1], `,"targets":[`...))
+	}
+}
+
+// alive gives the client another while to take what follows.
+func (w *planWriter) alive() {
+	_ = w.control.SetWriteDeadline(time.Now().Add(w.c.api.limits.Stall))
+}
+
+func (w *planWriter) target(t *plan.Target, p *planned) error {
+	if w.count++; w.count%64 == 0 {
+		w.alive()
+		if err := w.c.r.Context().Err(); err != nil {
+			return err
+		}
+	}
+	if w.media == csvType || w.media == calendar {
+		return w.rows(t.Name, p)
+	}
+	data, err := json.Marshal(targetOf(t.Name, p))
+	if err != nil {
+		return err
+	}
+	if w.media == ndjson {
+		data = append(data, '\n')
+	} else if w.count > 1 {
+		w.out.WriteByte(',')
+	}
+	_, err = w.out.Write(data)
+	return err
+}
+
+func (w *planWriter) rows(name string, p *planned) error {
+	items := make([]render.Item, 0, len(p.Spans)+len(p.Blocked))
+	if p.err == nil {
+		for _, s := range p.Spans {
+			items = append(items, render.Item{Beam: w.c.query.Get("beam"), Target: name, Open: true, Span: s})
+		}
+		for i := range p.Blocked {
+			it := itemOf(closures.BeamID(w.c.query.Get("beam")), &p.Blocked[i])
+			it.Target = name
+			items = append(items, it)
+		}
+		render.Sort(items)
+	}
+	if w.media == calendar {
+		w.items = append(w.items, items...)
+		return nil
+	}
+	for i := range items {
+		if err := w.table.Row(&items[i]); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func (w *planWriter) end(n int) error {
+	w.alive()
+	switch w.media {
+	case ndjson:
+		data, err := json.Marshal(struct {
+			Done    bool `json:"done"`
+			Targets int  `json:"targets"`
+		}{true, n})
+		if err != nil {
+			return err
+		}
+		w.out.Write(append(data, '\n'))
+	case csvType:
+		if err := w.table.Flush(); err != nil {
+			return err
+		}
+	case calendar:
+		v, _ := w.c.view()
+		cal := render.Calendar{Name: v.Rules.Site.Name, At: w.c.wall()}
+		if err := cal.Write(w.out, w.items); err != nil {
+			return err
+		}
+	default:
+		w.out.WriteString("]}")
+	}
+	return w.out.Flush()
+}
+
+// outlookDoc is what is to come for the present aim.
+type outlookDoc struct {
+	Beam     closures.BeamID `json:"beam"`
+	AimKnown bool            `json:"aim_known" doc:"false: nothing can be said, and nothing is allowed"`
+	Target   string          `json:"target"`
+	From     time.Time       `json:"from"`
+	Until    time.Time       `json:"until"`
+	Allowed  []spanDoc       `json:"allowed"`
+	Closures []closureDoc    `json:"closures"`
+	Cautions []wire.Caution  `json:"cautions"`
+	LeftOut  []string        `json:"left_out" doc:"reasons that cannot be foreseen"`
+}
+
+func (c *call) outlook() error {
+	v, _ := c.view()
+	r, _, err := c.theBeam(v)
+	if err != nil {
+		return err
+	}
+	hours, err := c.number("hours", 0.01, 48, 12)
+	if err != nil {
+		return err
+	}
+	from := c.wall().UTC()
+	over := span.Span{From: from, Until: from.Add(time.Duration(hours * float64(time.Hour)))}
+	k := v.known(r.ID)
+	out := outlookDoc{Beam: r.ID, Target: k.Aim.Target, From: over.From, Until: over.Until, Allowed: []spanDoc{}, Closures: []closureDoc{}, Cautions: []wire.Caution{}, LeftOut: leftOut()}
+	if k.AimUsed == nil {
+		return c.reply(http.StatusOK, out)
+	}
+	give, err := c.slot()
+	if err != nil {
+		return err
+	}
+	defer give()
+	p, err := c.prepare(v, r.ID, over)
+	if err != nil {
+		return err
+	}
+	one := planned{}
+	if one.Allowed, err = p.One(k.AimUsed, &plan.Scratch{}); err != nil {
+		return err
+	}
+	t := targetOf("", &one)
+	out.AimKnown, out.Allowed, out.Closures, out.Cautions = true, t.Allowed, t.Blocked, t.Cautions
+	return c.reply(http.StatusOK, out)
+}
