@@ -24,10 +24,11 @@ type lineReader struct {
 	line       int  // number of the line handed out last
 	total      int64
 	open       bool // the last line had no line end
+	idle       int  // readings in a row that gave nothing
 }
 
 func newLineReader(r io.Reader, limit int64) *lineReader {
-	return &lineReader{r: r, limit: limit, buf: make([]byte, 4*maxLine)}
+	return &lineReader{r: r, limit: limit, buf: make([]byte, 4096)}
 }
 
 // next returns the next line without its line end, valid until the following
@@ -60,10 +61,20 @@ func (l *lineReader) next() ([]byte, error) {
 			l.open = true
 			return line, nil
 		}
-		copy(l.buf, l.buf[l.start:l.end])
+		to := l.buf
+		if len(to) < 4*maxLine { // small texts need no more; large ones soon have enough
+			to = make([]byte, 2*len(l.buf))
+		}
+		copy(to, l.buf[l.start:l.end])
+		l.buf = to
 		l.end -= l.start
 		l.start, searched = 0, l.end
 		n, err := l.r.Read(l.buf[l.end:])
+		if l.idle++; n > 0 {
+			l.idle = 0
+		} else if err == nil && l.idle > 100 {
+			return nil, io.ErrNoProgress
+		}
 		l.end += n
 		if l.total += int64(n); l.total > l.limit {
 			l.line++

@@ -133,6 +133,23 @@ func TestAReadersOwnErrorIsNoRefusal(t *testing.T) {
 	}
 }
 
+// idle is a reader that never gives anything.
+type idle struct{}
+
+func (idle) Read([]byte) (int, error) { return 0, nil }
+
+func TestAReaderThatGivesNothingEnds(t *testing.T) {
+	for _, n := range native {
+		r := io.MultiReader(bytes.NewReader(golden(t, n.format)[:600]), &idle{})
+		if n.format == YAML {
+			continue // read whole by io.ReadAll
+		}
+		if _, _, err := Read(r, n.format, Limits{}); !errors.Is(err, io.ErrNoProgress) {
+			t.Errorf("%v: %v", n.format, err)
+		}
+	}
+}
+
 func TestLineEndsOfTwoKinds(t *testing.T) {
 	want := mustRead(t, golden(t, YAML), YAML)
 	for _, n := range native {

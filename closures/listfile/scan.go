@@ -52,7 +52,7 @@ type syntaxError struct {
 func (e *syntaxError) Error() string { return e.cause }
 
 func newScanner(r io.Reader, limit int64) *scanner {
-	return &scanner{r: r, limit: limit, buf: make([]byte, 64<<10), line: 1}
+	return &scanner{r: r, limit: limit, buf: make([]byte, 4096), line: 1}
 }
 
 // here returns the scanner's place with the end of the line as far as read.
@@ -81,7 +81,12 @@ func (s *scanner) more() bool {
 		return false
 	}
 	keep := min(s.pos, 80)
-	copy(s.buf, s.buf[s.pos-keep:s.end])
+	to := s.buf
+	if len(to) < 64<<10 { // small texts need no more; large ones soon have enough
+		to = make([]byte, 2*len(s.buf))
+	}
+	copy(to, s.buf[s.pos-keep:s.end])
+	s.buf = to
 	s.lineStart = max(0, s.lineStart-(s.pos-keep))
 	s.end -= s.pos - keep
 	s.pos = keep
