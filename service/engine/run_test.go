@@ -162,6 +162,9 @@ func TestRunGrantsWhenTheRecordTells(t *testing.T) {
 			if u.View.Beams[0].Opening {
 				break
 			}
+			if time.Since(r.clock.start) > time.Minute {
+				t.Fatal("it never opens")
+			}
 		}
 		if r.open() {
 			t.Fatal("open before the record told")

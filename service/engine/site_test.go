@@ -3,6 +3,7 @@ package engine
 import (
 	"context"
 	"errors"
+	"strings"
 	"sync"
 	"testing"
 	"time"
@@ -46,7 +47,7 @@ func siteRules() *closures.Rules {
 	return r
 }
 
-// withAircraft adds two aircraft sources that need no warm-up and no proof.
+// withAircraft adds two optional aircraft sources.
 func withAircraft(r *closures.Rules) *closures.Rules {
 	r.Aircraft = closures.AircraftRules{
 		Configured: true, KeepOutHalfAngle: 2 * s1.Degree, KeepOutRadius: 300, KeepOutCeiling: 20e3, HorizontalAccel: 22, VerticalAccel: 4,
@@ -54,7 +55,7 @@ func withAircraft(r *closures.Rules) *closures.Rules {
 	}
 	for _, id := range []closures.Source{"rx-1", "rx-2"} {
 		r.Sources = append(r.Sources, closures.SourceRules{
-			ID: id, Kind: closures.AircraftSource, StaleAfter: 10 * time.Second, Latency: time.Second,
+			ID: id, Kind: closures.AircraftSource, StaleAfter: 10 * time.Second, Latency: time.Second, WarmUp: time.Second, MinMessagesPerMin: 5,
 			PositionError: 200, VerticalError: 100, VelocityError: 10, VerticalVelocityErr: 5,
 		})
 	}
@@ -235,7 +236,8 @@ type site struct {
 	clock *handClock
 	rec   *slate
 	rules *closures.Rules
-	dir   r3.Vector
+	local r3.Vector                // where the beam points: X east, Y north, Z up
+	dir   r3.Vector                // the same in ICRS
 	quiet func(closures.Body) bool // facts that are left out
 }
 
@@ -246,10 +248,11 @@ func newSite(t testing.TB, r *closures.Rules, change ...func(*Options)) *site {
 	if err != nil {
 		t.Fatal(err)
 	}
-	w.dir = n.ICRS(geometry.FromHorizon(150*s1.Degree, 65*s1.Degree), evening)
+	w.local = geometry.FromHorizon(150*s1.Degree, 65*s1.Degree)
+	w.dir = n.ICRS(w.local, evening)
 	opt := Options{
 		Clock: w.clock, Health: w.clock.health, Record: w.rec, Rules: r, Boot: closures.Boot{ID: "boot", At: evening},
-		Prepare: nights, Report: func(err error) { t.Log(err) },
+		Prepare: nights, Report: func(err error) { t.Log(strings.SplitN(err.Error(), "\n", 2)[0]) },
 	}
 	for _, f := range change {
 		f(&opt)

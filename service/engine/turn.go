@@ -107,7 +107,8 @@ func (e *Engine) decide(entries []Entry, b *batch, wall time.Time, boot time.Dur
 	out, caught := e.step(wall, boot)
 	for i := range e.facts {
 		if caught != nil && i == len(e.facts)-1 {
-			break // no tick: the batch was not applied
+			e.seq-- // no tick: the batch was not applied
+			break
 		}
 		entries = append(entries, Entry{Seq: e.facts[i].Seq, At: e.facts[i].At, What: Admitted{e.facts[i]}})
 	}
