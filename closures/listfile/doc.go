@@ -12,6 +12,19 @@
 // are kept to 1e-12 degree (3.6e-9 arcsec), so that a decimal of degrees
 // survives the way into radians and unit vectors and back to the digit.
 //
+// In the CSV form the head stands in lines "# key: value", with covers as
+// from/until and names parted by a comma and a blank; then the header row, and
+// one row for each window. The first row that names a region defines it; later
+// ones leave the shape columns empty or repeat them exactly. The shapes are
+// icrs, horizon, horizon_observed (as seen through the air), track and
+// whole_sky. A point of a track is a row whose window is "point", with ra_deg,
+// dec_deg and the time in from. A row may define a region and have no window.
+// Fields with commas or quotes are quoted, quotes doubled. The last line ends
+// like the others.
+//
+// A track is nowhere outside its points, so a window of a track that reaches
+// beyond them is refused: it would lose a closure.
+//
 // The package is pure but for reading from and writing to what it is handed;
 // nothing here keeps state between calls.
 package listfile

@@ -37,11 +37,34 @@ import (
 // readable: a rule that can never match, or that another one hides, does not
 // compile.
 //
-// A rule is: head, region, window, point (of a track), date, mark (a line that
-// says only where it stands) or ignore. Its named groups are values. A date or
-// a region, once read, holds for the lines below; entering a section forgets
-// the region. A form that lacks the year, the day or both takes them from the
-// last date.
+// The kinds of rules, and the values that their named groups can give:
+//
+//	head    id authority issued covers_from covers_until covers_for replaces beams
+//	        unlisted_sky window_count digest
+//	region  region ra dec radius az_from az_to el_from el_to throughout
+//	window  what a region has, and state from until for ref
+//	point   region at ra dec     (of a track)
+//	date    date                 (which the four above can give as well)
+//	mark    nothing: a line that says only where it stands
+//	ignore  nothing
+//
+// Besides is, match and example a rule can have: in (the sections it applies
+// in; a text begins in `top`), enter (the section it begins), need (any, some or
+// once), shape (icrs, horizon, track or whole_sky), observed, values (what every
+// such line has), words (what the text calls open and closed), as (how this
+// rule's values are written), each (an expression applied again and again over
+// the group `spans`, for several windows on a line), and midnight: what a time
+// of day without its day means after midnight. With `until` an end that is not
+// after its start is on the next day; with `night` a time before noon belongs
+// to the day after the date; with `forward` starts never go back, so where one
+// does a day has passed.
+//
+// Angles are written in deg, arcmin, arcsec, hours, hms or dms, durations in s,
+// min, hours, hms, hm or ms (minutes and seconds). A region without a name is
+// named by its place. A date or a region, once read, holds for the lines below;
+// entering a section forgets the region. A form that lacks the year, the day or
+// both takes them from the last date; what head says by time of day is of the
+// first date.
 type Layout struct {
 	name        string
 	latin       bool
