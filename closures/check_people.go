@@ -181,12 +181,14 @@ func (watchMissing) Now(c *Scene, sh *Sheet) {
 }
 
 // expire drops sightings and tracks that are over; changed reports whether
-// anything durable went.
+// anything durable went. A track that is dropped was outside the detection
+// range, so it was not durable.
 func (s *Scene) expire(at time.Time) (changed bool) {
 	over := func(f Sighted) bool { return !at.Before(f.until()) }
 	if slices.ContainsFunc(s.Sightings, over) {
 		s.Sightings = slices.DeleteFunc(slices.Clone(s.Sightings), over)
 		changed = true
 	}
-	return s.tracks.expire(s, at) || changed
+	s.tracks.expire(s, at)
+	return changed
 }

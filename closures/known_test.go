@@ -53,3 +53,23 @@ func TestKnownAircraft(t *testing.T) {
 		t.Errorf("%d popups, want the one overhead", k.Popups)
 	}
 }
+
+// Traffic that passes by far away must not make what is durable be written
+// again and again.
+func TestDroppingAFarTrackKeepsTheVersion(t *testing.T) {
+	w := newWorld(t, soundRules())
+	far := AircraftSeen{Source: "rx-1", Said: w.at, Aircraft: "4b1803", Located: true, Position: w.r.Site.Position, AltitudeFrom: AboveEllipsoid, Speed: 100}
+	far.Position.Lat += 80e3 / 6371e3 // beyond detection_range
+	w.step(time.Second, far)
+	v := w.s.DurableVersion()
+	if k := w.s.Known(w.at); len(k.Aircraft) != 1 || k.Aircraft[0].Inside {
+		t.Fatalf("aircraft: %+v", k.Aircraft)
+	}
+	w.step(2 * w.r.Aircraft.LostAfter)
+	if k := w.s.Known(w.at); len(k.Aircraft) != 0 {
+		t.Fatalf("not dropped: %+v", k.Aircraft)
+	}
+	if got := w.s.DurableVersion(); got != v {
+		t.Errorf("version %d, was %d", got, v)
+	}
+}

@@ -262,23 +262,20 @@ func (t *tracks) drop(i int) {
 // expire drops tracks that were last seen outside the detection range and not
 // heard for lost_after. One lost inside stays until it is seen again or
 // released by a person.
-func (t *tracks) expire(c *Scene, at time.Time) bool {
+func (t *tracks) expire(c *Scene, at time.Time) {
 	if c.Foreseen == nil {
-		return false
+		return
 	}
 	after := c.Rules.Aircraft.LostAfter
-	dropped := false
 	for i := 0; i < len(t.list); {
 		k := &t.list[i]
 		quiet := k.n > 0 && k.inside
 		if at.Sub(k.heard) > after && !quiet {
 			t.drop(i)
-			dropped = true
 			continue
 		}
 		i++
 	}
-	return dropped
 }
 
 func (s *State) applyTrackReleased(f TrackReleased, at time.Time) *Error {
