@@ -2,11 +2,11 @@ package engine
 
 import (
 	"crypto/sha256"
-	"encoding/binary"
 	"hash"
 	"time"
 
 	"beamward/closures"
+	"beamward/closures/wire"
 )
 
 // How often the tally of all decisions and, whether it changed or not, what a
@@ -117,7 +117,7 @@ func (t *tally) add(d *closures.Decision) {
 	}
 	t.To = d.Seq
 	t.Count++
-	t.buf = AppendDecision(t.buf[:0], d)
+	t.buf = wire.AppendDecision(t.buf[:0], d)
 	_, _ = t.sum.Write(t.buf)
 }
 
@@ -126,28 +126,4 @@ func (t *tally) take(boot time.Duration) Tallied {
 	t.sum.Sum(out.Sum[:0])
 	t.reset(boot)
 	return out
-}
-
-// AppendDecision appends the form of a decision that the tally sums: big
-// endian, the number (8 bytes), the instant in Unix nanoseconds (8), open (1),
-// the codes (4), the end of the opening in Unix nanoseconds or all ones where
-// there is none (8), the lengths of the beam's name and the reasons (4 each),
-// and the name.
-func AppendDecision(dst []byte, d *closures.Decision) []byte {
-	dst = binary.BigEndian.AppendUint64(dst, d.Seq)
-	dst = binary.BigEndian.AppendUint64(dst, uint64(d.At.UnixNano()))
-	open := byte(0)
-	if d.Open {
-		open = 1
-	}
-	dst = append(dst, open)
-	dst = binary.BigEndian.AppendUint32(dst, uint32(d.Codes))
-	until := ^uint64(0)
-	if !d.OpenUntil.IsZero() {
-		until = uint64(d.OpenUntil.UnixNano())
-	}
-	dst = binary.BigEndian.AppendUint64(dst, until)
-	dst = binary.BigEndian.AppendUint32(dst, uint32(len(d.Beam)))
-	dst = binary.BigEndian.AppendUint32(dst, uint32(len(d.Reasons)))
-	return append(dst, d.Beam...)
 }

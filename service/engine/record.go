@@ -87,7 +87,7 @@ type Granted struct {
 type Tallied struct {
 	From, To uint64 // numbers of the first and last decision
 	Count    uint64
-	Sum      closures.Digest // SHA-256 over AppendDecision of each
+	Sum      closures.Digest // SHA-256 over wire.AppendDecision of each
 }
 
 // Kept is all that a restart needs, as of this entry.
