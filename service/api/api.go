@@ -12,6 +12,7 @@ import (
 	"github.com/danielgtaylor/huma/v2"
 	"github.com/danielgtaylor/huma/v2/adapters/humachi"
 	"github.com/go-chi/chi/v5"
+	"github.com/go-chi/chi/v5/middleware"
 
 	"beamward/closures/wire"
 	"beamward/service/access"
@@ -49,6 +50,7 @@ func New(o Options) (*API, error) {
 	a.answers.keep = a.limits.Remember
 	a.hub.init(a)
 	a.router = chi.NewMux()
+	a.router.Use(middleware.GetHead)
 	a.document = humachi.New(a.router, documentConfig(o.Version))
 	for _, rt := range slices.Concat(beamRoutes(), listRoutes(), holdRoutes(), factRoutes(), knownRoutes(), closureRoutes(), planRoutes(), recordRoutes(), streamRoutes(), metaRoutes()) {
 		a.mount(rt)
@@ -137,7 +139,9 @@ func (a *API) notAllowed(w http.ResponseWriter, r *http.Request) {
 	var allowed []string
 	for _, m := range []string{http.MethodGet, http.MethodPut, http.MethodPost, http.MethodDelete, http.MethodPatch} {
 		if a.router.Match(chi.NewRouteContext(), m, path) {
-			allowed = append(allowed, m)
+			if allowed = append(allowed, m); m == http.MethodGet {
+				allowed = append(allowed, http.MethodHead)
+			}
 		}
 	}
 	out := refuse(http.StatusMethodNotAllowed, "this is not done here", "use "+strings.Join(allowed, ", "))

@@ -23,6 +23,7 @@ covers: {from: 2031-02-13T00:00:00Z, until: 2031-02-16T00:00:00Z}
 const openDome = `unlisted_sky: open
 regions:
   - {id: dome, whole_sky: true, throughout: open}
+windows: []
 `
 
 const closedField = `unlisted_sky: open

@@ -39,9 +39,6 @@ type entryDoc struct {
 const maxKinds = 32
 
 func (c *call) record() error {
-	if c.api.options.Record == nil {
-		return refuse(http.StatusServiceUnavailable, "this service keeps no record that could be read", "")
-	}
 	limit, after, err := c.page("record", "after", "before", "since", "until", "kinds", "order")
 	if err != nil {
 		return err
@@ -80,6 +77,9 @@ func (c *call) record() error {
 		} else {
 			q.After = n
 		}
+	}
+	if c.api.options.Record == nil {
+		return refuse(http.StatusServiceUnavailable, "this service keeps no record that could be read", "")
 	}
 	give, err := c.slot()
 	if err != nil {

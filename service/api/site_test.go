@@ -290,6 +290,7 @@ type site struct {
 	url    string
 	tokens map[string]string
 	client *http.Client
+	file   access.TokenFile
 }
 
 // people of a site with tokens, and their roles.
@@ -310,6 +311,7 @@ func newSite(t testing.TB, change ...func(*Options)) *site {
 		}
 		s.tokens[name] = secret.Reveal()
 	}
+	s.file = access.TokenFile(file)
 	s.start(access.Options{TokensFile: file}, change...)
 	return s
 }
@@ -401,6 +403,20 @@ func (s *site) do(who, method, path, body string, headers ...string) answer {
 			r.Header.Set(name, value)
 		}
 	}
+	return s.send(r)
+}
+
+func (s *site) request(method, path string) *http.Request {
+	s.t.Helper()
+	r, err := http.NewRequest(method, s.url+path, nil)
+	if err != nil {
+		s.t.Fatal(err)
+	}
+	return r
+}
+
+func (s *site) send(r *http.Request) answer {
+	s.t.Helper()
 	out, err := s.client.Do(r)
 	if err != nil {
 		s.t.Fatal(err)
