@@ -37,29 +37,41 @@ func saysOf(b closures.Body) (who deviceSays, state uint8, ok bool) {
 }
 
 // part cuts a turn's devices' words before the first that contradicts one
-// before it, and keeps the rest for the turn that follows at once. A step
-// decides once, after all its facts: an interlock that was unsafe for a moment
-// must not be covered by the safe word that came after it.
+// before it, and keeps the rest for the turn that follows at once; until then
+// no more are taken from their lane. A step decides once, after all its facts:
+// an interlock that was unsafe for a moment must not be covered by the safe
+// word that came after it.
 func (e *Engine) part(b *batch) {
-	all := b.devices
-	if len(e.deferred) > 0 {
-		all = append(e.deferred, all...)
-		e.deferred = nil
+	all, kept := e.deferred, len(e.deferred) > 0
+	if !kept {
+		all = b.devices
 	}
+	n := e.agree(all)
+	switch {
+	case n == len(all):
+		e.deferred = nil
+	case kept:
+		e.deferred = all[n:]
+	default: // the batch's memory is used again
+		e.deferred = slices.Clone(all[n:])
+		clear(all[n:])
+	}
+	b.devices = all[:n:n]
+	b.more = b.more || len(e.deferred) > 0
+}
+
+// agree returns how many words come before the first contradiction.
+func (e *Engine) agree(words []pending) int {
 	clear(e.says)
-	for i := range all {
-		who, state, ok := saysOf(all[i].body)
+	for i := range words {
+		who, state, ok := saysOf(words[i].body)
 		if !ok {
 			continue
 		}
 		if before, said := e.says[who]; said && before != state {
-			e.deferred = slices.Clone(all[i:])
-			clear(all[i:])
-			all = all[:i]
-			break
+			return i
 		}
 		e.says[who] = state
 	}
-	b.devices = all
-	b.more = b.more || len(e.deferred) > 0
+	return len(words)
 }

@@ -22,7 +22,8 @@
 //
 // The newest aim, aircraft report and sign of life of each source and subject
 // waits alone: a newer one takes its place and is counted. Everything else is
-// never superseded and goes first, people's words before devices'. Each lane
+// never superseded and goes first, people's words before devices'; where a
+// device contradicts its last word, each has a turn of its own. Each lane
 // is bounded and refuses with closures.Busy when full. While the record has
 // room for nothing but the engine's own entries, all intake is refused but
 // what can only close. A watcher that does not keep up is cut off.
@@ -30,12 +31,13 @@
 // # Which way it fails
 //
 // Before the first turn, after a panic, after a stop and while an entry is
-// lost, every beam is published as shuttered. After one panic the state is
-// built anew from what was durable, so that everything must be heard afresh; a
-// second one in a row ends Run with an error, still shuttered. The same is
-// done where the clock went back, since an age cannot be told then. A published
-// view that grows old is for its reader to refuse; it carries both clocks for
-// that.
+// lost, every beam is published as shuttered (by starting, fault, starting and
+// record). After one panic the state is built anew from what was durable, so
+// that everything must be heard afresh; a second one in a row ends Run with an
+// error, still shuttered. It is built anew as well where the clock went back,
+// since an age cannot be told then, where entries of the record were lost, and
+// where the site's place changed. A published view that grows old is for its
+// reader to refuse; it carries both clocks for that.
 //
 // A View is never changed. The Engine's exported methods are safe for
 // concurrent use; a Stepper has one owner, which takes the place of Run.

@@ -143,32 +143,3 @@ func New(opt Options) (*Engine, error) {
 	e.shutter(opt.Boot.At, e.boot, closures.CodeStarting, "no decision has been made since the start")
 	return e, nil
 }
-
-// take makes a new state the engine's: it is told everything anew, and what
-// was granted is not.
-func (e *Engine) take(s *closures.State, cause string) {
-	e.state = s
-	e.kept, e.version = s.Durable()
-	e.known, e.knownAt = s.Known(e.at), e.boot
-	e.rules, e.foreseen, e.book, e.holds = s.Rules(), s.Foreseen(), s.Book(), s.Holds()
-	e.in.setRules(e.rules)
-	e.gates = make([]gate, len(e.rules.Beams))
-	e.recorded = make([]closures.Decision, len(e.rules.Beams))
-	e.begun = &Begun{Boot: closures.Boot{ID: e.opt.Boot.ID, At: e.at}, Build: e.opt.Build, Rules: e.rules, Cause: cause}
-	e.tellAnew, e.torn = true, false
-	e.own = e.own[:0]
-	for _, n := range e.nights {
-		e.own = append(e.own, closures.NightReady{Night: n})
-	}
-	e.own = append(e.own, closures.Started{})
-}
-
-// anew builds the state from what was durable, as a restart would.
-func (e *Engine) anew(cause string) error {
-	s, err := closures.New(e.rules, closures.Boot{ID: e.opt.Boot.ID, At: e.at}, e.kept)
-	if err != nil {
-		return err
-	}
-	e.take(s, cause)
-	return nil
-}

@@ -452,6 +452,38 @@ func TestStepBackHasAllHeardAfresh(t *testing.T) {
 	}
 }
 
+// Tracks are never forgotten when the state begins anew, whatever the cause.
+func TestTracksOutliveANewState(t *testing.T) {
+	for name, spoil := range map[string]func(*site){
+		"a panic":        func(w *site) { w.e.beforeStep = func() { w.e.beforeStep = nil; panic("poisoned") } },
+		"the clock back": func(w *site) { w.clock.wall = w.clock.wall.Add(-20 * time.Millisecond) },
+		"lost entries":   func(w *site) { w.e.torn = true },
+	} {
+		w := newSite(t, withAircraft(siteRules())).opened()
+		at, _ := w.clock.Read()
+		p := w.rules.Site.Position.Offset(w.local.Mul(7000)) // in the beam
+		b := w.step(10*time.Millisecond, closures.AircraftSeen{Source: "rx-1", Said: at, Aircraft: "400001", Located: true, Position: p, AltitudeFrom: closures.AboveEllipsoid, Speed: 200})
+		mustShut(t, b, closures.CodeAircraft)
+		spoil(w)
+		b = w.step(10 * time.Millisecond)
+		if n := len(what[Begun](w.rec)); n != 2 {
+			t.Errorf("%s: %d starts", name, n)
+		}
+		mustShut(t, b, closures.CodeAircraft)
+	}
+}
+
+// A panic in a turn that has nothing to record.
+func TestPanicOfAnEmptyTurn(t *testing.T) {
+	w := newSite(t, siteRules()).opened()
+	w.e.beforeStep = func() { w.e.beforeStep = nil; panic("poisoned") }
+	v, err := w.s.Turn()
+	if err != nil {
+		t.Fatal(err)
+	}
+	mustShut(t, v.Beams[0], closures.CodeFault)
+}
+
 func TestNewPlaceStartsAnew(t *testing.T) {
 	w := newSite(t, siteRules(), func(o *Options) { o.Prepare = nil }).opened()
 	moved := siteRules()

@@ -113,7 +113,7 @@ func TestIntakeKeepsTheNewestOfEach(t *testing.T) {
 }
 
 func takeAll(t *rapid.T, in *intake, all *[]pending, at time.Duration) {
-	b := in.take(time.Hour + at)
+	b := in.take(time.Hour+at, true)
 	if b.more {
 		t.Fatal("something is left")
 	}
@@ -153,7 +153,7 @@ func TestIntakeIsBounded(t *testing.T) {
 	}
 	people, facts := 0, 0
 	for more := true; more; {
-		b := in.take(time.Hour)
+		b := in.take(time.Hour, true)
 		got := bodies(&b)
 		if len(b.people)+len(b.devices)+len(b.latest) > maxBatch {
 			t.Fatal("a batch over its bound")
@@ -206,7 +206,7 @@ func TestWhatSupersedesIsNeverLessClosed(t *testing.T) {
 				t.Fatal(err)
 			}
 		}
-		b := in.take(time.Hour)
+		b := in.take(time.Hour, true)
 		got := bodies(&b)
 		if len(got) != c.kept {
 			t.Errorf("%s: %d kept, want %d", name, len(got), c.kept)
@@ -239,7 +239,7 @@ func TestFarAircraftOnceASecond(t *testing.T) {
 				t.Fatal(err)
 			}
 		}
-		b := in.take(time.Hour + at)
+		b := in.take(time.Hour+at, true)
 		for _, body := range bodies(&b) {
 			a := body.(closures.AircraftSeen)
 			admitted[a.Aircraft] = append(admitted[a.Aircraft], at)
@@ -259,7 +259,7 @@ func TestFarAircraftOnceASecond(t *testing.T) {
 	at := 5*time.Second + 10*time.Millisecond
 	last := seen(at, "far", true)
 	_, _ = in.offer(fact("x", at, last))
-	b := in.take(time.Hour + at + time.Second)
+	b := in.take(time.Hour+at+time.Second, true)
 	if got := bodies(&b); len(got) != 1 || got[0] != closures.Body(last) {
 		t.Errorf("the last report: %v", got)
 	}
@@ -269,7 +269,7 @@ func TestFarAircraftOnceASecond(t *testing.T) {
 	came := seen(at+1, "far", true)
 	came.Position = near
 	_, _ = in.offer(fact("x", at+1, came))
-	b = in.take(time.Hour + at)
+	b = in.take(time.Hour+at, true)
 	if got := bodies(&b); len(got) != 1 || got[0] != closures.Body(came) {
 		t.Errorf("coming near: %v", got)
 	}

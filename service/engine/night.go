@@ -19,13 +19,12 @@ const (
 // prepared is the nights that were asked for, and those that are ready and not
 // taken yet. Its methods are safe for concurrent use.
 type prepared struct {
-	mu     sync.Mutex
-	asked  map[int64]time.Time // start of a bin, Unix seconds; when it was asked for
-	done   map[int64]bool
-	fresh  []closures.Body
-	epoch  int // rises when the rules change: what was begun before is of no use
-	queue  chan order
-	queued bool
+	mu    sync.Mutex
+	asked map[int64]time.Time // start of a bin, Unix seconds; when it was asked for
+	done  map[int64]bool
+	fresh []closures.Body
+	epoch int        // rises when the rules change: what was begun before is of no use
+	queue chan order // to Run's worker; nil: they are made in the turn
 }
 
 // order asks for one night.

@@ -155,7 +155,7 @@ func (e *Engine) giveUp(err error) error {
 // end lets go of everybody who waits.
 func (e *Engine) end() {
 	e.settle(e.opt.Record.Condition())
-	b := e.in.take(e.boot)
+	b := e.in.take(e.boot, true)
 	for _, lane := range [...][]pending{e.carried, e.deferred, b.people, b.devices, b.latest} {
 		for i := range lane {
 			if w := lane[i].wait; w != nil {

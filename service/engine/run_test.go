@@ -34,7 +34,6 @@ type running struct {
 	e      *Engine
 	rec    *slate
 	clock  bubbleClock
-	unsafe chan struct{}
 	ended  chan error
 	cancel context.CancelFunc
 }

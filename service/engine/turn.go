@@ -23,7 +23,7 @@ func (e *Engine) turn() (again bool, err error) {
 		// Ages count from instants that lie ahead now: nothing known is fresh.
 		e.at = wall
 		e.shutter(wall, boot, closures.CodeClock, "the clock went back")
-		if err := e.anew("the clock went back"); err != nil {
+		if err := e.renew("the clock went back"); err != nil {
 			return false, err
 		}
 	}
@@ -38,7 +38,7 @@ func (e *Engine) turn() (again bool, err error) {
 		cause = "entries of the record were lost"
 	}
 	if cause != "" {
-		if err := e.anew(cause); err != nil {
+		if err := e.renew(cause); err != nil {
 			return false, err
 		}
 	}
@@ -46,7 +46,7 @@ func (e *Engine) turn() (again bool, err error) {
 
 	entries := e.beginEntries()
 	own := e.ownFacts(boot)
-	batch := e.in.take(boot)
+	batch := e.in.take(boot, len(e.deferred) == 0)
 	e.part(&batch)
 	e.number(own, &batch, wall, boot)
 	tick := e.seq
@@ -239,28 +239,4 @@ func (e *Engine) newRules(r *closures.Rules) {
 	e.rules, e.gates, e.recorded = r, gates, recorded
 	e.in.setRules(r)
 	e.nights0.forget()
-}
-
-// afterPanic shutters, records what came before, and builds the state anew; a
-// second panic in a row is the end.
-func (e *Engine) afterPanic(caught error, entries []Entry, b *batch, wall time.Time, boot time.Duration) (again bool, err error) {
-	e.panics++
-	e.stats.panics.Add(1)
-	before := e.view.Load()
-	v := e.shutter(wall, boot, closures.CodeFault, "the decision failed")
-	e.announce(before, v)
-	e.opt.Report(caught)
-	_ = e.opt.Record.Append(entries)
-	if e.panics > 1 {
-		return false, fmt.Errorf("twice in a row: %w", caught)
-	}
-	// What people and devices said is given again; what comes again by itself
-	// is not, for it may be the cause.
-	e.carried = append(append(append([]pending(nil), e.carried...), b.people...), b.devices...)
-	if err := e.anew("a decision failed"); err != nil {
-		return false, err
-	}
-	e.own = append(e.own, closures.Fault{Beam: closures.EveryBeam, Detail: "a decision failed"})
-	e.in.giveBack(b)
-	return true, nil
 }
