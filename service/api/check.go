@@ -23,7 +23,7 @@ type checkDoc struct {
 	Class     string               `json:"class" enum:"same,tightening,loosening" doc:"same: it is known already; tightening only if that is proven"`
 	Would     string               `json:"would" enum:"nothing,take-effect,wait-for-confirmation,wait-for-second-person" doc:"what bringing it would do; its closed windows take effect at once in any case"`
 	Change    changeDoc            `json:"change"`
-	understood
+	Understood
 }
 
 // classDoc says how a list stands to what is known.
@@ -66,7 +66,7 @@ func (c *call) checkList() error {
 	out := checkDoc{
 		Authority: t.Authority, ID: t.ID, Issued: t.Issued.UTC(), Covers: spanDoc{t.Covers.From.UTC(), t.Covers.Until.UTC()}, Beams: slices.Clone(t.Beams),
 		Windows: len(t.Windows), Digest: t.Digest.String(), Format: report.Format.String(), Lines: report.Lines, Class: class, Would: would,
-		Change: changeOf(v, l), understood: understoodOf(&sum),
+		Change: changeOf(v, l), Understood: understoodOf(&sum),
 	}
 	if out.Beams == nil {
 		out.Beams = []closures.BeamID{}

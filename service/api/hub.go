@@ -181,7 +181,7 @@ func changedHolds(old, v *View, add func(string, any)) {
 // because it is long over.
 type listChange struct {
 	Change string   `json:"change" enum:"came,changed,dropped"`
-	List   listHead `json:"list"`
+	List   ListHead `json:"list"`
 }
 
 func changedLists(old, v *View, add func(string, any)) {

@@ -9,8 +9,8 @@ import (
 	"beamward/closures/listfile"
 )
 
-// listHead is a list in a table of lists.
-type listHead struct {
+// ListHead is a list in a table of lists.
+type ListHead struct {
 	Authority  closures.AuthorityID `json:"authority"`
 	ID         closures.ListID      `json:"id"`
 	Status     string               `json:"status" enum:"waiting,in-force,replaced,withdrawn" doc:"a waiting list closes already and opens nothing"`
@@ -27,9 +27,9 @@ type listHead struct {
 	ETag       string               `json:"etag"`
 }
 
-func headOf(v *View, e *closures.Entry) listHead {
+func headOf(v *View, e *closures.Entry) ListHead {
 	t := e.List.Text()
-	out := listHead{
+	out := ListHead{
 		Authority: t.Authority, ID: t.ID, Status: e.Status.String(), Issued: t.Issued.UTC(), Covers: spanDoc{t.Covers.From.UTC(), t.Covers.Until.UTC()},
 		Beams: t.Beams, Regions: len(t.Regions), Windows: len(t.Windows), Digest: t.Digest.String(), By: e.By, Confirmed: e.Confirmed,
 		Withdrawal: e.Asked, Needs: "nothing", ETag: listTag(e),
@@ -46,13 +46,13 @@ func headOf(v *View, e *closures.Entry) listHead {
 	return out
 }
 
-// understood is what was read of a list.
-type understood struct {
+// Understood is what was read of a list.
+type Understood struct {
 	Replaces     []closures.ListID `json:"replaces"`
 	UnlistedSky  string            `json:"unlisted_sky" enum:"open,closed"`
 	ProofDigest  bool              `json:"proved_digest" doc:"it carried its digest, and that was right"`
 	ProofCount   bool              `json:"proved_window_count"`
-	Regions      []regionSummary   `json:"regions" doc:"the first 1000"`
+	RegionList   []regionSummary   `json:"regions" doc:"the first 1000"`
 	ClosedTotalS float64           `json:"closed_total_s" doc:"of all regions, each on its own"`
 }
 
@@ -67,12 +67,12 @@ type regionSummary struct {
 const regionsShown = 1000
 
 type listDoc struct {
-	listHead
-	understood
+	ListHead
+	Understood
 }
 
-func understoodOf(s *listfile.Summary) understood {
-	out := understood{Replaces: s.Replaces, UnlistedSky: "closed", ProofDigest: s.Proof.Digest, ProofCount: s.Proof.Count, Regions: []regionSummary{}}
+func understoodOf(s *listfile.Summary) Understood {
+	out := Understood{Replaces: s.Replaces, UnlistedSky: "closed", ProofDigest: s.Proof.Digest, ProofCount: s.Proof.Count, RegionList: []regionSummary{}}
 	if out.Replaces == nil {
 		out.Replaces = []closures.ListID{}
 	}
@@ -81,7 +81,7 @@ func understoodOf(s *listfile.Summary) understood {
 	}
 	for _, r := range s.Regions {
 		out.ClosedTotalS += r.Closed.Seconds()
-		if len(out.Regions) == regionsShown {
+		if len(out.RegionList) == regionsShown {
 			continue
 		}
 		one := regionSummary{ID: r.ID, Shape: r.Shape.String(), Windows: r.Windows, ClosedS: r.Closed.Seconds()}
@@ -91,7 +91,7 @@ func understoodOf(s *listfile.Summary) understood {
 		case closures.ThroughoutOpen:
 			one.Throughout = "open"
 		}
-		out.Regions = append(out.Regions, one)
+		out.RegionList = append(out.RegionList, one)
 	}
 	return out
 }
@@ -104,12 +104,12 @@ func (a *API) listOf(v *View, e *closures.Entry) listDoc {
 // summings remembers what summing up large lists gave.
 type summings struct {
 	mu sync.Mutex
-	by map[*closures.List]understood
+	by map[*closures.List]Understood
 }
 
 const summingsKept = 64
 
-func (s *summings) of(l *closures.List) understood {
+func (s *summings) of(l *closures.List) Understood {
 	s.mu.Lock()
 	out, ok := s.by[l]
 	s.mu.Unlock()
@@ -121,14 +121,14 @@ func (s *summings) of(l *closures.List) understood {
 	s.mu.Lock()
 	defer s.mu.Unlock()
 	if s.by == nil || len(s.by) >= summingsKept {
-		s.by = map[*closures.List]understood{}
+		s.by = map[*closures.List]Understood{}
 	}
 	s.by[l] = out
 	return out
 }
 
 type listsDoc struct {
-	Lists  []listHead `json:"lists"`
+	Lists  []ListHead `json:"lists"`
 	Cursor string     `json:"cursor" doc:"for the next page; empty: there is none"`
 }
 
@@ -146,7 +146,7 @@ func (c *call) lists() error {
 	if err != nil {
 		return err
 	}
-	out := listsDoc{Lists: []listHead{}}
+	out := listsDoc{Lists: []ListHead{}}
 	for i := range v.Book {
 		e := &v.Book[i]
 		if status != "" && e.Status.String() != status || authority != "" && string(e.List.Authority()) != authority {

@@ -49,7 +49,7 @@ func TestAListTakesTwoPeople(t *testing.T) {
 	text := listText("orbital-desk", "2031-045-B", closedField)
 	var check checkDoc
 	s.want(200, "eve", "POST", "/v1/lists/check", text, yaml).into(t, &check)
-	if check.Class != "loosening" || check.Would != "wait-for-second-person" || check.Windows != 1 || check.Regions[0].ClosedS != 39 || check.Change.ClosedS != 39 || len(check.Change.CoverAdded) != 1 {
+	if check.Class != "loosening" || check.Would != "wait-for-second-person" || check.Windows != 1 || check.RegionList[0].ClosedS != 39 || check.Change.ClosedS != 39 || len(check.Change.CoverAdded) != 1 {
 		t.Errorf("checked as %+v", check)
 	}
 	if len(s.stage.View().Book) != 0 {

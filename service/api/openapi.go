@@ -38,7 +38,7 @@ func problemSchema(reg huma.Registry) *huma.Schema {
 	return reg.Schema(reflect.TypeFor[wire.Problem](), true, "Problem")
 }
 
-// health describes the routes that stand before signing in.
+// describeHealth describes the routes that stand before signing in.
 func (a *API) describeHealth() {
 	reg := a.document.OpenAPI().Components.Schemas
 	anyone := []map[string][]string{}
@@ -57,18 +57,34 @@ func (a *API) describeHealth() {
 	}
 }
 
-// marshalDocument writes the document. What no schema of ours wants is left
-// out: the library marks every object with its own $schema in some versions.
+// allowNull adds null to what the schemas say of pointers to objects: the
+// library knows it of plain values alone.
+func allowNull(reg huma.Registry) {
+	for name, schema := range reg.Map() {
+		t := reg.TypeFromRef("#/components/schemas/" + name)
+		if t == nil || t.Kind() != reflect.Struct {
+			continue
+		}
+		for i := range t.NumField() {
+			f := t.Field(i)
+			key, rest, _ := strings.Cut(f.Tag.Get("json"), ",")
+			p := schema.Properties[key]
+			if p == nil || f.Type.Kind() != reflect.Pointer || strings.Contains(rest, "omitempty") || p.Ref == "" {
+				continue
+			}
+			schema.Properties[key] = &huma.Schema{AnyOf: []*huma.Schema{{Ref: p.Ref}, {Type: "null"}}, Description: p.Description}
+		}
+	}
+}
+
+// marshalDocument writes the document, once everything is in it.
 func (a *API) marshalDocument() ([]byte, error) {
 	a.describeHealth()
+	allowNull(a.document.OpenAPI().Components.Schemas)
 	if a.options.Metrics != nil {
 		a.document.OpenAPI().AddOperation(&huma.Operation{Method: "GET", Path: "/metrics", OperationID: "metrics", Summary: "Figures for Prometheus", Responses: map[string]*huma.Response{
 			"200": {Description: "OK", Content: map[string]*huma.MediaType{"text/plain": {Schema: &huma.Schema{Type: huma.TypeString}}}},
 		}})
 	}
-	body, err := json.Marshal(a.document.OpenAPI())
-	if err != nil {
-		return nil, err
-	}
-	return []byte(strings.TrimSpace(string(body))), nil
+	return json.Marshal(a.document.OpenAPI())
 }

@@ -50,8 +50,8 @@ type targetBody struct {
 	Priority *float64 `json:"priority,omitempty"`
 }
 
-// planHead says what a plan is for. It stands before the targets.
-type planHead struct {
+// PlanHead says what a plan is for. It stands before the targets.
+type PlanHead struct {
 	Beam        closures.BeamID `json:"beam"`
 	From        time.Time       `json:"from"`
 	Until       time.Time       `json:"until"`
@@ -62,7 +62,7 @@ type planHead struct {
 }
 
 type planDoc struct {
-	planHead
+	PlanHead
 	Targets []targetDoc `json:"targets"`
 }
 
@@ -135,7 +135,7 @@ func (c *call) plan() error {
 	if err != nil {
 		return err
 	}
-	head := planHead{
+	head := PlanHead{
 		Beam: beam, From: over.From, Until: over.Until, RulesDigest: v.Rules.Digest.String(), ListsDigest: v.Book.Digest().String(), LeftOut: leftOut(), Notice: render.Notice,
 	}
 	out := planWriter{c: c, media: media, out: bufio.NewWriterSize(c.w, 32<<10), control: http.NewResponseController(c.w)}
@@ -174,7 +174,7 @@ type planWriter struct {
 	count   int
 }
 
-func (w *planWriter) begin(head *planHead) {
+func (w *planWriter) begin(head *PlanHead) {
 	w.c.w.Header().Set("Content-Type", w.media)
 	w.alive()
 	data, err := json.Marshal(head)

@@ -5,6 +5,7 @@ import (
 	"context"
 	"encoding/json"
 	"io"
+	"math"
 	"net"
 	"net/http"
 	"path/filepath"
@@ -438,3 +439,5 @@ func (s *site) want(status int, who, method, path, body string, headers ...strin
 	}
 	return a
 }
+
+func nanValue() float64 { return math.NaN() }

@@ -96,7 +96,7 @@ type viewDoc struct {
 	Site      string       `json:"site"`
 	Beams     []beamState  `json:"beams"`
 	Holds     []holdDoc    `json:"holds"`
-	Lists     []listHead   `json:"lists" doc:"those in force or waiting, at most 100"`
+	Lists     []ListHead   `json:"lists" doc:"those in force or waiting, at most 100"`
 	ListTotal int          `json:"list_total"`
 	Sources   []sourceDoc  `json:"sources"`
 	Record    conditionDoc `json:"record"`
@@ -114,7 +114,7 @@ const listsInView = 100
 func viewOf(v *View, fresh bool) viewDoc {
 	out := viewDoc{
 		At: v.At.UTC(), BootID: v.BootID, Seq: v.Seq, Fresh: fresh, Simulated: v.Simulated, Site: v.Rules.Site.Name,
-		Beams: []beamState{}, Holds: []holdDoc{}, Lists: []listHead{}, Sources: sourcesOf(v),
+		Beams: []beamState{}, Holds: []holdDoc{}, Lists: []ListHead{}, Sources: sourcesOf(v),
 		Record: conditionDoc{Healthy: v.Record.healthy(), Durable: v.Record.Durable, BehindS: v.Record.Behind.Seconds()},
 	}
 	for i := range v.Beams {
