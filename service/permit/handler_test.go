@@ -8,6 +8,7 @@ import (
 	"net"
 	"net/http"
 	"net/http/httptest"
+	"net/url"
 	"strings"
 	"testing"
 	"time"
@@ -98,6 +99,37 @@ func TestRoutes(t *testing.T) {
 	if w.Code != 503 {
 		t.Errorf("healthz of an engine that stopped: %d", w.Code)
 	}
+}
+
+// Whatever is asked for, the answer is one of five and only a good nonce comes
+// back.
+func FuzzHandler(f *testing.F) {
+	h := NewHandler(issuer(f, newStage()))
+	f.Add("/v1/beams/north/permit", "nonce=abc")
+	f.Add("/v1/permit-key", "")
+	f.Add("/healthz", "nonce=%00")
+	f.Add("/v1/beams/%2e%2e/permit", "a&b;c")
+	f.Fuzz(func(t *testing.T, path, query string) {
+		r := httptest.NewRequest("GET", "http://permits/", nil)
+		r.URL = &url.URL{Path: path, RawQuery: query}
+		w := httptest.NewRecorder()
+		h.ServeHTTP(w, r)
+		switch w.Code {
+		case 200:
+			if path != routeHealth && path != routeKey && path != "/v1/beams/north/permit" {
+				t.Fatalf("%q is served", path)
+			}
+			if path == "/v1/beams/north/permit" {
+				p, err := wire.ParsePermit(w.Body.Bytes())
+				if err != nil || !ValidNonce(p.Nonce) {
+					t.Fatalf("%v, nonce %q", err, p.Nonce)
+				}
+			}
+		case 400, 404:
+		default:
+			t.Fatalf("%q?%q: %d", path, query, w.Code)
+		}
+	})
 }
 
 // serving runs a server on a free port until the test ends.
