@@ -54,17 +54,21 @@ func (c *call) takes() string {
 	return t
 }
 
-// body returns the request's body, held to a number of bytes and a time.
+// body returns the request's body, held to a number of bytes and a time. The
+// answer has its own time after that.
 func (c *call) body(limit int64, within time.Duration) io.Reader {
-	// A connection that knows no deadlines (as in tests without one) is held by
-	// the server's own.
-	_ = http.NewResponseController(c.w).SetReadDeadline(time.Now().Add(within))
+	control, now := http.NewResponseController(c.w), time.Now()
+	_ = control.SetReadDeadline(now.Add(within))
+	_ = control.SetWriteDeadline(now.Add(within + c.api.limits.Answer))
 	return http.MaxBytesReader(c.w, c.r.Body, limit)
 }
 
-// longer gives the answer another while, where reading the body took its time.
+// longer gives the request another while, once its body is read. A connection on which reading
+// has run out of time would end the request's context, too.
 func (c *call) longer(d time.Duration) {
-	_ = http.NewResponseController(c.w).SetWriteDeadline(time.Now().Add(d))
+	control, end := http.NewResponseController(c.w), time.Now().Add(d)
+	_ = control.SetReadDeadline(end)
+	_ = control.SetWriteDeadline(end)
 }
 
 // read decodes a JSON body strictly into what into points to.

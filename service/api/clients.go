@@ -119,6 +119,7 @@ func (cs *clients) stream(c *call) (end func(), err error) {
 // slot waits for one of the few places for work that takes the processor for
 // long; give gives it back.
 func (c *call) slot() (give func(), err error) {
+	c.longer(c.api.limits.HeavyWait + c.api.limits.Answer)
 	t := time.NewTimer(c.api.limits.HeavyWait)
 	defer t.Stop()
 	select {

@@ -78,7 +78,6 @@ type teller struct {
 
 func (c *call) facts() error {
 	body := c.body(c.api.limits.Facts, c.api.limits.LongTime)
-	c.longer(c.api.limits.LongTime + c.api.limits.Answer)
 	in := c.api.intakes.take(body)
 	defer c.api.intakes.give(in)
 	t := teller{c: c, rules: c.api.options.Engine.View().Rules}

@@ -58,7 +58,6 @@ func (c *call) readList() (*closures.List, listfile.Report, error) {
 		format, _ = listfile.ParseFormat(word)
 	}
 	body := c.body(c.api.limits.List, c.api.limits.LongTime)
-	c.longer(c.api.limits.LongTime + c.api.limits.Durable + c.api.limits.Answer)
 	l, report, err := listfile.Load(body, format, listfile.Limits{Bytes: c.api.limits.List})
 	var bad *listfile.Refusal
 	if errors.As(err, &bad) {

@@ -131,6 +131,7 @@ func (c *call) plan() error {
 	if err != nil {
 		return targetsRefused(err)
 	}
+	c.longer(c.api.limits.Answer)
 	p, err := c.prepare(v, beam, over)
 	if err != nil {
 		return err
@@ -138,7 +139,7 @@ func (c *call) plan() error {
 	head := PlanHead{
 		Beam: beam, From: over.From, Until: over.Until, RulesDigest: v.Rules.Digest.String(), ListsDigest: v.Book.Digest().String(), LeftOut: leftOut(), Notice: render.Notice,
 	}
-	out := planWriter{c: c, media: media, out: bufio.NewWriterSize(c.w, 32<<10), control: http.NewResponseController(c.w)}
+	out := planWriter{c: c, media: media, out: bufio.NewWriterSize(c.w, 32<<10)}
 	out.begin(&head)
 	if err := each(p, targets, func(i int, t *planned) error { return out.target(&targets[i], t) }); err == nil {
 		err = out.end(len(targets))
@@ -165,13 +166,12 @@ func targetsRefused(err error) error {
 
 // planWriter writes a plan as it is made.
 type planWriter struct {
-	c       *call
-	media   string
-	out     *bufio.Writer
-	control *http.ResponseController
-	table   *render.Table
-	items   []render.Item // of a calendar, which is written at its end
-	count   int
+	c     *call
+	media string
+	out   *bufio.Writer
+	table *render.Table
+	items []render.Item // of a calendar, which is written at its end
+	count int
 }
 
 func (w *planWriter) begin(head *PlanHead) {
@@ -194,9 +194,7 @@ func (w *planWriter) begin(head *PlanHead) {
 }
 
 // alive gives the client another while to take what follows.
-func (w *planWriter) alive() {
-	_ = w.control.SetWriteDeadline(time.Now().Add(w.c.api.limits.Stall))
-}
+func (w *planWriter) alive() { w.c.longer(w.c.api.limits.Stall) }
 
 func (w *planWriter) target(t *plan.Target, p *planned) error {
 	if w.count++; w.count%64 == 0 {

@@ -56,6 +56,7 @@ func (c *call) stream() error {
 		return refuse(http.StatusServiceUnavailable, "the stream does not run", "try again in a moment").after(time.Second)
 	}
 	s.after = at
+	_ = s.out.SetReadDeadline(time.Time{}) // nothing more is read; a reader that is gone shows when it is written to
 	header := c.w.Header()
 	header.Set("Content-Type", eventStream)
 	header.Set("X-Accel-Buffering", "no")

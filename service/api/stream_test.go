@@ -100,9 +100,30 @@ func (e streamed) into(t testing.TB, v any) {
 	}
 }
 
+// A stream outlives every bound that other requests have.
+func TestAStreamGoesOn(t *testing.T) {
+	s := newSite(t, func(o *Options) {
+		o.Limits.BodyTime, o.Limits.Answer, o.Limits.Heartbeat = 50*time.Millisecond, 50*time.Millisecond, 10*time.Millisecond
+	})
+	r := s.stream("eve", "")
+	beats := 0
+	for start := time.Now(); time.Since(start) < 700*time.Millisecond && r.lines.Scan(); {
+		if r.lines.Text() == ": still here" {
+			beats++
+		}
+	}
+	if r.lines.Err() != nil || beats == 0 {
+		t.Errorf("the stream ended: %v", r.lines.Err())
+	}
+	s.place(1)
+	r.want("decision")
+	r.want("hold")
+}
+
 func TestTheStreamTellsChangesAtOnce(t *testing.T) {
 	s := newSite(t)
 	s.stage.opened(t)
+	s.settled()
 	r := s.stream("eve", "")
 	first, _ := r.next()
 	var v viewDoc
@@ -168,9 +189,7 @@ func TestTheStreamResumes(t *testing.T) {
 	last := r.want("hold")
 	r.close()
 	s.place(5)
-	for s.stage.lag(s.api) {
-		time.Sleep(time.Millisecond)
-	}
+	s.settled()
 	r = s.stream("eve", last.id)
 	for i := range 5 {
 		e, _ := r.next()
@@ -193,20 +212,23 @@ func TestTheStreamResumes(t *testing.T) {
 	}
 }
 
-// lag reports whether the hub has not taken the newest view yet.
-func (s *stage) lag(a *API) bool {
-	a.hub.mu.Lock()
-	defer a.hub.mu.Unlock()
-	return a.hub.view != s.View()
+// settled waits until the hub has taken the newest view.
+func (s *site) settled() {
+	lag := func() bool {
+		s.api.hub.mu.Lock()
+		defer s.api.hub.mu.Unlock()
+		return s.api.hub.view != s.stage.View()
+	}
+	for lag() {
+		time.Sleep(time.Millisecond)
+	}
 }
 
 func TestTheStreamSaysReset(t *testing.T) {
 	s := newSite(t, func(o *Options) { o.Limits.Ring = 8 })
 	s.stream("eve", "").next()
 	s.place(200)
-	for s.stage.lag(s.api) {
-		time.Sleep(time.Millisecond)
-	}
+	s.settled()
 	for _, last := range []string{"boot-1.1", "boot-0.5", "boot-1.99999999", "boot-1", "boot-1.", "boot-1.-1", "boot-1.x", ".", "nonsense", "boot-1.18446744073709551615"} {
 		r := s.stream("eve", last)
 		e, _ := r.next()
@@ -221,6 +243,7 @@ func TestTheStreamSaysReset(t *testing.T) {
 func TestOldDecisionsAreTakenDownFromTheStream(t *testing.T) {
 	s := newSite(t)
 	s.stage.opened(t)
+	s.settled()
 	r := s.stream("eve", "")
 	r.next()
 	s.stage.advance(time.Second) // and nobody decides
