@@ -8,6 +8,7 @@ import (
 	"beamward/geometry/crossing"
 	"beamward/geometry/earth"
 	"beamward/geometry/sky"
+	"beamward/geometry/span"
 
 	"github.com/golang/geo/r3"
 	"github.com/golang/geo/s1"
@@ -22,12 +23,20 @@ func (fieldCrossing) Code() Code { return CodeFieldCrossing }
 func (fieldCrossing) Look(f *Foreseen, q *Question, sh *Sheet) {
 	first := sh.begin()
 	least := Margin{Value: math.Inf(1), Unit: Radian}
+	planned := q.Now.IsZero()
+	var up span.Set
+	if planned && len(f.Rules.Neighbours) > 0 {
+		up = q.risen(sh)
+	}
 	for i := range f.Rules.Neighbours {
 		n := &f.Rules.Neighbours[i]
-		if !n.minds(q.Beam.Wavelength) {
-			continue
+		switch {
+		case !n.minds(q.Beam.Wavelength) || n.Yields == YieldsTheirs:
+		case planned:
+			f.crossPlanned(q, up, n, sh, &least)
+		default:
+			f.cross(q, n, sh, &least)
 		}
-		f.cross(q, n, f.pointing(n.ID), sh, &least)
 	}
 	sh.sortFrom(first)
 	sh.finish(CodeFieldCrossing, first, least)
@@ -44,67 +53,134 @@ func (n *NeighbourRules) minds(wavelength geometry.Length) bool {
 	return len(n.Passbands) == 0
 }
 
+// pointing returns a telescope's present pointing, or nil.
 func (f *Foreseen) pointing(id TelescopeID) *Pointing {
 	for i := range f.Pointings {
-		if f.Pointings[i].Telescope == id {
+		if f.Pointings[i].Telescope == id && !f.Pointings[i].Scheduled {
 			return &f.Pointings[i]
 		}
 	}
 	return nil
 }
 
-// cross finds when the beam may be in one neighbour's field. Who is silent
-// matters to a decision; a plan takes the last aim that it knows, and says so
-// where there is none.
-func (f *Foreseen) cross(q *Question, n *NeighbourRules, p *Pointing, sh *Sheet, least *Margin) {
-	unknown := func(detail string) {
-		sh.add(Finding{Code: CodeFieldCrossing, Source: Source(n.ID), Verdict: Unknown, Over: q.Over, Margin: UnknownMargin(), Detail: detail})
-		least.Value = math.NaN()
-	}
-	caution := func(detail string) {
-		sh.Cautions = append(sh.Cautions, Caution{Code: CodeFieldCrossing, Source: Source(n.ID), Detail: detail})
-	}
-	if n.Yields == YieldsTheirs {
-		return
-	}
+// cross finds when the beam may be in one neighbour's field, for a decision.
+func (f *Foreseen) cross(q *Question, n *NeighbourRules, sh *Sheet, least *Margin) {
+	p := f.pointing(n.ID)
 	known := p != nil && p.Aim != nil
-	if !q.Now.IsZero() {
-		old := time.Duration(math.MaxInt64)
-		if p != nil {
-			old = age(q.Now, p.Seen.Said, p.Heard)
-		}
-		switch silent := !(old <= n.StaleAfter) || !known; {
-		case silent && !n.IgnoreSilent:
-			unknown("the neighbour's pointing is not known")
-			return
-		case silent && (!known || !(old <= n.ForgetAfter)):
-			caution("the neighbour is silent and its last pointing is forgotten")
-			return
-		case silent:
-			caution("the neighbour is silent; its last pointing counts")
-		}
-	} else if !known {
-		caution("the neighbour's pointing is not known, so the plan leaves it out")
-		return
+	old := time.Duration(math.MaxInt64)
+	if p != nil {
+		old = age(q.Now, p.Seen.Said, p.Heard)
 	}
+	switch silent := !(old <= n.StaleAfter) || !known; {
+	case silent && !n.IgnoreSilent:
+		sh.unknownCrossing(q, n, least, "the neighbour's pointing is not known")
+		return
+	case silent && (!known || !(old <= n.ForgetAfter)):
+		sh.caution(n, "the neighbour is silent and its last pointing is forgotten")
+		return
+	case silent:
+		sh.caution(n, "the neighbour is silent; its last pointing counts")
+	}
+	f.crossPointing(q, n, p, sh, least)
+}
+
+// crossPlanned is cross for a plan. Who is silent matters to a decision; a plan
+// takes the pointings of a timetable, for the rest the last one that it knows,
+// and says so where there is none. up is when the beam is above the horizon.
+func (f *Foreseen) crossPlanned(q *Question, up span.Set, n *NeighbourRules, sh *Sheet, least *Margin) {
+	known := sh.scratch[2][:0]
+	for i := range f.Pointings {
+		p := &f.Pointings[i]
+		if p.Telescope != n.ID || p.Aim == nil {
+			continue
+		}
+		over := p.over(q.Over)
+		if over.Empty() {
+			continue
+		}
+		known = append(known, over)
+		switch {
+		case n.OnlyExposing && p.Seen.Exposing == No && !p.Scheduled:
+			sh.caution(n, "the neighbour is not exposing now, so the plan leaves it out")
+		case !p.Scheduled:
+			sh.caution(n, "the plan takes the neighbour's present aim for the time to come")
+		}
+		part := *q
+		for _, s := range up {
+			if part.Over = s.Intersect(over); !part.Over.Empty() {
+				f.crossPointing(&part, n, p, sh, least)
+			}
+		}
+	}
+	sh.scratch[2] = known
+	if !span.Tidy(known).Covers(q.Over) {
+		sh.caution(n, "the neighbour's pointing is not known, so the plan leaves it out")
+	}
+}
+
+// risen returns when the beam may be above the horizon, or all of the question's
+// span for a beam that may point lower: a beam below the horizon is in nobody's
+// field, and its elevation closes it whatever else does.
+func (q *Question) risen(sh *Sheet) span.Set {
+	if !(q.Beam.Limits.ElevationMin >= 0) {
+		return append(sh.scratch[1][:0], q.Over)
+	}
+	direction, rate := q.overhead()
+	spare := q.extent().Radians() + setting
+	coarse := *q
+	coarse.Edge = time.Minute
+	sh.scratch[1] = coarse.search(sh.scratch[1], rate, q.Over, func(n *sky.Night, at time.Time) float64 {
+		d := direction(n, at)
+		return -math.Atan2(d.Z, math.Hypot(d.X, d.Y)) - spare - n.Error().Radians()
+	})
+	return sh.scratch[1]
+}
+
+// setting is how far below the horizon, airless, a beam is surely below its
+// lowest elevation: what the air lifts there at most, and its error.
+const setting = 2 * math.Pi / 180
+
+// over returns when, within a span, the pointing counts.
+func (p *Pointing) over(whole span.Span) span.Span {
+	if p.During == (span.Span{}) {
+		return whole
+	}
+	return whole.Intersect(p.During)
+}
+
+func (s *Sheet) unknownCrossing(q *Question, n *NeighbourRules, least *Margin, detail string) {
+	s.add(Finding{Code: CodeFieldCrossing, Source: Source(n.ID), Verdict: Unknown, Over: q.Over, Margin: UnknownMargin(), Detail: detail})
+	least.Value = math.NaN()
+}
+
+func (s *Sheet) caution(n *NeighbourRules, detail string) {
+	s.Cautions = append(s.Cautions, Caution{Code: CodeFieldCrossing, Source: Source(n.ID), Detail: detail})
+}
+
+// crossPointing finds when the beam may be in the field at one pointing.
+func (f *Foreseen) crossPointing(q *Question, n *NeighbourRules, p *Pointing, sh *Sheet, least *Margin) {
 	if n.OnlyExposing && p.Seen.Exposing == No {
 		return
 	}
 	if n.Yields == YieldsLater && !q.AimBegan.IsZero() && q.AimBegan.Before(p.AimBegan) {
 		return // theirs began later
 	}
-	for i := range q.Beam.Launches {
-		pair, err := f.pair(q, n, p, &q.Beam.Launches[i])
-		if err != nil {
-			unknown("the geometry of the neighbour and the beam cannot be told")
+	passages, ok := q.Shared.passages(q, p)
+	if !ok {
+		var err error
+		if passages, err = f.passages(sh.passages[:0], q, n, p); err != nil {
+			sh.unknownCrossing(q, n, least, "the geometry of the neighbour and the beam cannot be told")
 			return
 		}
-		f.crossPair(q, n, p, &pair, sh, least)
+		sh.passages = passages
+	}
+	for i := range passages {
+		f.crossPassage(q, n, p, &passages[i], sh, least)
 	}
 }
 
-// pair makes one launch and one telescope ready.
-func (f *Foreseen) pair(q *Question, n *NeighbourRules, p *Pointing, l *Launch) (crossing.Pair, error) {
+// pairing states one launch and one pointing for package crossing.
+func (f *Foreseen) pairing(q *Question, n *NeighbourRules, p *Pointing, l *Launch) (crossing.Beam, crossing.Telescope, [2]crossing.Part) {
 	_, ours := q.overhead()
 	theirs := Question{Beam: q.Beam, Aim: p.Aim}
 	_, rate := theirs.overhead()
@@ -127,7 +203,7 @@ func (f *Foreseen) pair(q *Question, n *NeighbourRules, p *Pointing, l *Launch) 
 	if b.GuideStar.Rayleigh {
 		star = crossing.Part{From: b.GuideStar.From, Until: b.GuideStar.Until, Halo: n.Halo}
 	}
-	return crossing.Prepare(beam, telescope, crossing.Column(n.Halo), star)
+	return beam, telescope, [...]crossing.Part{crossing.Column(n.Halo), star}
 }
 
 // converging bounds the angle between the aim and the direction from a launch
@@ -163,15 +239,30 @@ func liftNear(axis r3.Vector) (lift, slope float64) {
 	return lowLift * min(1, max(0, 1-(el-lowFull)/lowFades)), lowLift / lowFades
 }
 
-func (f *Foreseen) crossPair(q *Question, n *NeighbourRules, p *Pointing, pair *crossing.Pair, sh *Sheet, least *Margin) {
+func (f *Foreseen) crossPassage(q *Question, n *NeighbourRules, p *Pointing, o *passage, sh *Sheet, least *Margin) {
 	beam, _ := q.overhead()
 	theirs := Question{Beam: q.Beam, Aim: p.Aim}
 	axis, axisRate := theirs.overhead()
+	slack := q.Slack.Seconds()
 	margin := func(night *sky.Night, at time.Time) (float64, float64) {
-		a := axis(night, at)
-		r := pair.Margin(beam(night, at), a)
+		b, a := beam(night, at), axis(night, at)
+		r := o.pair.Margin(b, a)
 		lift, slope := liftNear(a)
-		return r.Margin - lift, r.Rate + slope*axisRate
+		rate := r.Rate + slope*axisRate
+		m := r.Margin - lift - rate*slack
+		if !q.Now.IsZero() {
+			return m, rate
+		}
+		sure := 0.0
+		if m > 0 {
+			sure = o.clear(b, a, &r, rate*slack, lift, m/rate)
+		} else {
+			sure = o.shut(b, a, &r, rate*slack, lift)
+		}
+		if sure*rate > math.Abs(m) {
+			rate = math.Abs(m) / sure
+		}
+		return m, rate
 	}
 	found := Finding{Code: CodeFieldCrossing, Source: Source(n.ID), Verdict: Violated, Margin: Margin{Unit: Radian}, Detail: "the beam crosses the field of a neighbour telescope"}
 	sh.scratch[0] = q.searchRated(sh.scratch[0], q.Over, margin)

@@ -2,6 +2,7 @@ package closures
 
 import (
 	"math"
+	"slices"
 	"time"
 
 	"github.com/golang/geo/r3"
@@ -42,8 +43,8 @@ func (listedClosure) Look(f *Foreseen, q *Question, sh *Sheet) {
 func (l *List) look(f *Foreseen, q *Question, sh *Sheet, list int, lead, tail time.Duration) {
 	near := q.Over.Widen(tail, lead) // what starts or ends just outside still reaches in
 	covered := l.text.Covers.Intersect(near)
-	hits := q.Hits.of(list)
-	if hits == nil {
+	hits, ok := q.Hits.of(list)
+	if !ok {
 		lo, hi, pad := q.band()
 		sh.hits = l.might(sh.hits[:0], lo, hi, pad)
 		hits = sh.hits
@@ -216,11 +217,12 @@ type Hits struct {
 // hitSlack is how far an aim may move before its hits are made again.
 const hitSlack = 0.01
 
-func (h *Hits) of(list int) []int32 {
+// of returns a list's hits; ok is false where they were not looked for.
+func (h *Hits) of(list int) (hits []int32, ok bool) {
 	if h == nil || list >= len(h.regions) {
-		return nil
+		return nil, false
 	}
-	return h.regions[list]
+	return h.regions[list], true
 }
 
 // MakeHits finds the regions of every list near a fixed ICRS aim; nil for any
@@ -229,22 +231,49 @@ func MakeHits(f *Foreseen, b *BeamRules, a *Aim) *Hits {
 	if a == nil || a.Frame != ICRS || a.ownRate() != 0 || !a.Valid() {
 		return nil
 	}
-	h := &Hits{centre: a.Direction, slack: hitSlack, regions: make([][]int32, len(f.Lists))}
-	d := declination(a.Direction)
-	pad := hitSlack + (a.Error + b.Aim.Error + b.Asterism).Radians()
+	h := &Hits{slack: hitSlack}
+	h.find(f, a.Direction, hitSlack+(a.Error+b.Aim.Error+b.Asterism).Radians())
+	return h
+}
+
+// Along finds, in h's memory, the regions near the way of a question's aim over
+// its span, and returns h; nil for an aim that is not fixed to the stars but for
+// a slow way of its own.
+func (h *Hits) Along(f *Foreseen, q *Question) *Hits {
+	a := q.Aim
+	if a.Frame != ICRS && a.Frame != Table {
+		return nil
+	}
+	centre, way := a.Direction, 0.0
+	if rate := a.ownRate(); rate > 0 {
+		half := q.Over.Length() / 2
+		centre, way = a.own(q.Over.From.Add(half)), rate*half.Seconds()
+	}
+	if !unit(centre) || !(way < 0.1) {
+		return nil
+	}
+	h.find(f, centre, way+q.extent().Radians())
+	return h
+}
+
+// find looks for the regions within reach of a direction.
+func (h *Hits) find(f *Foreseen, centre r3.Vector, reach float64) {
+	h.centre = centre
+	h.regions = slices.Grow(h.regions[:0], len(f.Lists))[:len(f.Lists)]
+	d := declination(centre)
 	for i := range f.Lists {
 		l := f.Lists[i].List
-		near := []int32{}
-		for _, index := range l.might(nil, d, d, pad) {
+		all := l.might(h.regions[i][:0], d, d, reach)
+		near := all[:0]
+		for _, index := range all {
 			r := &l.text.Regions[index]
-			if r.Shape == ICRSCone && geometry.Separation(r.Direction, a.Direction).Radians() > r.Radius.Radians()+pad {
-				continue
+			// The chord is no longer than the arc, and quicker to tell.
+			if most := r.Radius.Radians() + reach; r.Shape != ICRSCone || !(r.Direction.Sub(centre).Norm2() > most*most*(1+1e-8)+1e-15) {
+				near = append(near, index)
 			}
-			near = append(near, index)
 		}
 		h.regions[i] = near
 	}
-	return h
 }
 
 // serves reports whether the hits hold for aim a, which may differ from the

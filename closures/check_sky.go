@@ -74,6 +74,9 @@ type daylight struct{}
 func (daylight) Code() Code { return CodeDaylight }
 
 func (daylight) Look(f *Foreseen, q *Question, sh *Sheet) {
+	if q.Shared.daylight(q, sh) {
+		return
+	}
 	first := sh.begin()
 	limit := q.Beam.Limits.SunBelow
 	if limit >= 90*s1.Degree {

@@ -33,6 +33,10 @@ type Pointing struct {
 	Seen      AimSeen
 	Heard     time.Time
 	AimBegan  time.Time // when this aim was first heard, by this clock
+
+	// Of a plan only. A decision knows present pointings alone.
+	Scheduled bool      // a timetable says so, rather than the telescope
+	During    span.Span // when the pointing counts; zero: at any time
 }
 
 // ForeseeableCheck answers over a span for an aim. The planner and the
@@ -77,21 +81,23 @@ func (f *Foreseen) Look(q *Question, sh *Sheet) {
 // clock's error, and which of them answered at all. Where one did not, all of
 // over is closed.
 func (f *Foreseen) Closed(q *Question, sh *Sheet, clockError time.Duration) span.Set {
+	return f.AppendClosed(nil, q, sh, clockError)
+}
+
+// AppendClosed is Closed in the memory of dst, which it writes over.
+func (f *Foreseen) AppendClosed(dst span.Set, q *Question, sh *Sheet, clockError time.Duration) span.Set {
 	margin := f.Rules.MarginTime(q.Beam)
-	var spans []span.Span
-	for c := Code(0); c < NumCodes; c++ {
-		if !ForeseeableCodes().Has(c) {
-			continue
-		}
-		a := sh.Answers[c]
+	spans := dst[:0]
+	for _, check := range foreseeable() {
+		a := &sh.Answers[check.Code()]
 		if a.Verdict == Unknown && a.N == 0 {
-			return span.Make(q.Over)
+			return append(dst[:0], q.Over)
 		}
-		for _, found := range sh.Found[a.First : a.First+a.N] {
-			spans = append(spans, found.Over.Widen(margin+clockError, clockError))
+		for i := range sh.Found[a.First : a.First+a.N] {
+			spans = append(spans, sh.Found[a.First+i].Over.Widen(margin+clockError, clockError).Intersect(q.Over))
 		}
 	}
-	return span.Make(spans...).Within(q.Over)
+	return span.Tidy(spans)
 }
 
 // inForce reports whether a list for beam b opens at an instant.

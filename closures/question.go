@@ -24,6 +24,7 @@ type Question struct {
 	Now      time.Time     // of a decision; zero in a plan, which leaves out who is silent
 	AimBegan time.Time     // when the aim began, for who yields; zero: it is the later one
 	Hits     *Hits         // regions near a fixed aim, made once; nil: looked up
+	Shared   *Shared       // what many aims of a plan have in common; nil: worked out
 }
 
 // The placing of edges. A plan's closures hold those of a decision for the
@@ -49,13 +50,14 @@ func (q *Question) extent() s1.Angle { return q.err() + q.Beam.Asterism }
 // it that no night covers. The margin is given the night that holds the
 // instant.
 func (q *Question) search(dst span.Set, rate float64, over span.Span, margin func(n *sky.Night, at time.Time) float64) span.Set {
-	return q.searchRated(dst, over, func(n *sky.Night, at time.Time) (float64, float64) { return margin(n, at), rate })
+	less := rate * q.Slack.Seconds()
+	return q.searchRated(dst, over, func(n *sky.Night, at time.Time) (float64, float64) { return margin(n, at) - less, rate })
 }
 
-// searchRated is search for a margin that states its rate with each value.
+// searchRated is search for a margin that states its rate with each value, and
+// from which the slack has been taken.
 func (q *Question) searchRated(dst span.Set, over span.Span, margin func(n *sky.Night, at time.Time) (m, rate float64)) span.Set {
 	dst = dst[:0]
-	slack := q.Slack.Seconds()
 	at := over.From
 	for at.Before(over.Until) {
 		n := nightAt(q.Nights, at)
@@ -71,10 +73,7 @@ func (q *Question) searchRated(dst span.Set, over span.Span, margin func(n *sky.
 			continue
 		}
 		part := span.Span{From: at, Until: over.Until}.Intersect(BinOf(n))
-		dst = span.AppendBelowRated(dst, func(t time.Time) (float64, float64) {
-			m, rate := margin(n, t)
-			return m - rate*slack, rate
-		}, part, q.Edge)
+		dst = span.AppendBelowRated(dst, func(t time.Time) (float64, float64) { return margin(n, t) }, part, q.Edge)
 		at = part.Until
 	}
 	return dst

@@ -82,6 +82,8 @@ type Sheet struct {
 	hits    []int32
 	scratch [6]span.Set
 	volumes []encounter.Volume
+
+	passages []passage
 }
 
 // Reset empties the sheet and keeps its memory.

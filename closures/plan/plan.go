@@ -1,6 +1,7 @@
 package plan
 
 import (
+	"cmp"
 	"slices"
 	"time"
 
@@ -16,6 +17,7 @@ type Planner struct {
 	over     span.Span
 	near     span.Span // over, and as far beyond as a closure can reach in
 	nights   []*sky.Night
+	shared   *closures.Shared
 }
 
 // MaxLength is the longest span that one plan answers for.
@@ -44,7 +46,9 @@ func Prepare(f *closures.Foreseen, beam closures.BeamID, over span.Span, nights 
 		}
 		at = sky.Bin(at).Until
 	}
-	return &Planner{foreseen: f, beam: b, over: over, near: near, nights: nights}, nil
+	p := &Planner{foreseen: f, beam: b, over: over, near: near, nights: nights}
+	p.shared = closures.Share(f, p.question(nil))
+	return p, nil
 }
 
 // Nights prepares every night that a plan over a span needs, in order.
@@ -81,7 +85,16 @@ func (a *Allowed) Share(over span.Span) float64 {
 }
 
 // Scratch is one caller's memory, used again for each target.
-type Scratch struct{ sheet closures.Sheet }
+type Scratch struct {
+	sheet  closures.Sheet
+	hits   closures.Hits
+	closed span.Set
+	order  []int32
+}
+
+func (p *Planner) question(a *closures.Aim) closures.Question {
+	return closures.Question{Beam: p.beam, Aim: a, Over: p.near, Nights: p.nights, Edge: closures.EdgePlan, Slack: closures.PlanSlack}
+}
 
 // One returns when the aim is allowed. An aim that is not valid is refused.
 // What is returned is the caller's own.
@@ -89,27 +102,38 @@ func (p *Planner) One(a *closures.Aim, scratch *Scratch) (Allowed, error) {
 	if !a.Valid() {
 		return Allowed{}, closures.Errorf(closures.Invalid, "give a whole aim with finite numbers", "plan: the aim cannot be used")
 	}
-	q := closures.Question{
-		Beam: p.beam, Aim: a, Over: p.near, Nights: p.nights,
-		Edge: closures.EdgePlan, Slack: closures.PlanSlack, Hits: closures.MakeHits(p.foreseen, p.beam, a),
-	}
+	q := p.question(a)
+	q.Hits, q.Shared = scratch.hits.Along(p.foreseen, &q), p.shared
 	sh := &scratch.sheet
 	sh.Reset()
 	p.foreseen.Look(&q, sh)
 	clockError := p.foreseen.Rules.PlanClockError()
-	closed := p.foreseen.Closed(&q, sh, clockError)
-	out := Allowed{
-		Spans:    closed.Within(p.over).Complement(p.over),
+	scratch.closed = p.foreseen.AppendClosed(scratch.closed, &q, sh, clockError)
+	return Allowed{
+		Spans:    scratch.closed.Complement(p.over),
+		Blocked:  p.blocked(scratch, clockError),
 		Cautions: slices.Clone(sh.Cautions),
 		LeftOut:  closures.AllCodes &^ closures.ForeseeableCodes(),
-	}
-	margin := p.foreseen.Rules.MarginTime(p.beam)
-	for _, f := range sh.Found {
-		f.Over = f.Over.Widen(margin+clockError, clockError).Intersect(p.over)
-		if !f.Over.Empty() {
-			out.Blocked = append(out.Blocked, f)
+	}, nil
+}
+
+// blocked returns the findings as closures of the plan's span, in order of
+// time.
+func (p *Planner) blocked(scratch *Scratch, clockError time.Duration) []closures.Finding {
+	early := p.foreseen.Rules.MarginTime(p.beam) + clockError
+	found := scratch.sheet.Found
+	order := scratch.order[:0]
+	for i := range found {
+		f := &found[i]
+		if f.Over = f.Over.Widen(early, clockError).Intersect(p.over); !f.Over.Empty() {
+			order = append(order, int32(i))
 		}
 	}
-	slices.SortStableFunc(out.Blocked, func(x, y closures.Finding) int { return x.Over.From.Compare(y.Over.From) })
-	return out, nil
+	scratch.order = order
+	slices.SortFunc(order, func(i, j int32) int { return cmp.Or(found[i].Over.From.Compare(found[j].Over.From), cmp.Compare(i, j)) })
+	out := make([]closures.Finding, len(order))
+	for k, i := range order {
+		out[k] = found[i]
+	}
+	return out
 }
