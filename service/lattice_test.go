@@ -28,6 +28,7 @@ var siblings = map[string][]string{
 	"service/replay": {"service/journal"},
 	"service/night":  {"service/journal", "service/render"},
 	"service/api":    {"service/render", "service/access"},
+	"service/feed":   {"service/feed/modes", "service/feed/asterix"},
 }
 
 // outer parts may import the whole service; it never imports them.
