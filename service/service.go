@@ -137,7 +137,7 @@ func (s *Service) openRecord(ctx context.Context) error {
 // health is the clock's word of itself, as the engine asks for it.
 func (s *Service) health() engine.ClockReport {
 	k := s.clock.State()
-	r := engine.ClockReport{Step: k.Step, Suspended: k.Suspended, Synchronised: k.Known && k.Synchronised, MaxErrorSaid: k.Known, MaxError: k.MaxError}
+	r := engine.ClockReport{Step: k.Step, Suspended: k.Suspended != 0, Synchronised: k.Known && k.Synchronised, MaxErrorSaid: k.Known, MaxError: k.MaxError}
 	r.Fault = k.Fault
 	return r
 }
@@ -187,6 +187,15 @@ func (s *Service) Close() error {
 // Engine is the engine, for the demo and the simulator.
 func (s *Service) Engine() *engine.Engine { return s.engine }
 
+// CaughtUp reports whether the service has done what the clock asks of it so
+// far: it has decided at the present instant, within a decision interval, and
+// nothing has waited for the store longer than a block may. Whoever steps a
+// virtual clock waits for it, since virtual time can outrun a real disk.
+func (s *Service) CaughtUp() bool {
+	v := s.engine.View()
+	return s.clock.Boot()-v.Boot <= v.Rules.Permit.DecisionInterval && s.journal.State().Behind <= followLimit
+}
+
 // Addresses tells where the service listens.
 func (s *Service) Addresses() Addresses { return s.parts.addresses }
 
@@ -200,6 +209,11 @@ type parts struct {
 type part struct {
 	name string
 	run  func(ctx context.Context) error
+}
+
+// run adds what Run will run until its context ends.
+func (p *parts) run(name string, f func(ctx context.Context) error) {
+	p.running = append(p.running, part{name, f})
 }
 
 // listen binds one address; its listener is closed with the service.
@@ -219,3 +233,6 @@ func (p *parts) listen(network, address string) (net.Listener, error) {
 
 // drain is how long a listener waits for requests to end.
 const drain = 2 * time.Second
+
+// followLimit is twice the age at which a block is written.
+const followLimit = 200 * time.Millisecond
