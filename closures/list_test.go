@@ -159,3 +159,29 @@ func TestWaitingAndCoverage(t *testing.T) {
 		t.Errorf("what it replaced is %v", e.Status)
 	}
 }
+
+// A closed window that starts with its track is widened by the lead as any
+// other: the track stays at its ends for as long as a lead or tail may reach.
+func TestLeadBeforeATrack(t *testing.T) {
+	w := newWorld(t, siteRules())
+	aim := &Aim{Frame: ICRS, Direction: w.dir, Motion: Tracking}
+	from, until := w.at.Add(time.Minute), w.at.Add(3*time.Minute)
+	l, err := Index(&ListText{
+		ID: "l", Authority: "orbital-desk", Issued: w.at, Covers: span.Span{From: w.at.Add(-time.Hour), Until: w.at.Add(time.Hour)}, UnlistedOpen: true, Digest: Digest{1},
+		Regions: []Region{{ID: "r", Shape: TrackCone, Radius: s1.Degree, Points: []AimPoint{{from, w.dir}, {until, w.dir}}}},
+		Windows: []Window{{Region: 0, From: from.UnixNano(), Until: until.UnixNano()}},
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, c := range []struct {
+		at     time.Time
+		closed bool
+	}{
+		{from.Add(-5*time.Second - 1), false}, {from.Add(-5 * time.Second), true}, {until.Add(5*time.Second - 1), true}, {until.Add(5 * time.Second), false},
+	} {
+		if got := w.listed(l, false, aim, c.at); got != c.closed {
+			t.Errorf("at %v: closed %v", c.at.Sub(from), got)
+		}
+	}
+}

@@ -85,9 +85,16 @@ func (q *Question) always(m float64, over span.Span, dst span.Set) span.Set {
 	return appendSpan(dst, over)
 }
 
+// inTrack searches along a moving cone. It is nowhere outside its points but
+// that, to be might in, it stays at its ends for as long as any lead or tail
+// may reach: a closed window that starts with the track is widened too.
 func (q *Question) inTrack(r *Region, over span.Span, dst span.Set, sign float64) span.Set {
 	track := Aim{Frame: Table, Points: r.Points}
-	there := span.Span{From: r.Points[0].At, Until: r.Points[len(r.Points)-1].At.Add(1)} // both ends belong to it
+	first, last := r.Points[0].At, r.Points[len(r.Points)-1].At
+	there := span.Span{From: first, Until: last.Add(1)} // both ends belong to it
+	if sign > 0 {
+		there = there.Widen(MaxLeadOrTail, MaxLeadOrTail)
+	}
 	part := over.Intersect(there)
 	direction, rate := q.inSky()
 	rate += track.ownRate()
@@ -97,7 +104,13 @@ func (q *Question) inTrack(r *Region, over span.Span, dst span.Set, sign float64
 	}
 	if !part.Empty() {
 		found := q.search(nil, rate, part, func(n *sky.Night, at time.Time) float64 {
-			return sign*(geometry.Separation(direction(n, at), track.own(at))-r.Radius).Radians() - q.pad(n, turned)
+			on := at
+			if on.Before(first) {
+				on = first
+			} else if on.After(last) {
+				on = last
+			}
+			return sign*(geometry.Separation(direction(n, at), track.own(on))-r.Radius).Radians() - q.pad(n, turned)
 		})
 		for _, s := range found {
 			dst = appendSpan(dst, s)
