@@ -203,23 +203,23 @@ func (f *Folder) trouble(why string) {
 }
 
 // openFolder opens the folder, unless it is another authority's.
-func (f *Folder) openFolder() (*os.Root, error) {
+func (f *Folder) openFolder() (*os.Root, fs.FileInfo, error) {
 	root, err := os.OpenRoot(f.options.Path)
 	if err != nil {
 		f.claims.claim(f, nil)
 		if errors.Is(err, fs.ErrNotExist) {
-			return nil, errors.New("it is gone: lists that are in force stay so; make it again")
+			return nil, nil, errors.New("it is gone: lists that are in force stay so; make it again")
 		}
-		return nil, fmt.Errorf("it cannot be opened: %w", err)
+		return nil, nil, fmt.Errorf("it cannot be opened: %w", err)
 	}
 	info, err := root.Stat(".")
 	if err != nil {
 		root.Close()
-		return nil, fmt.Errorf("it cannot be opened: %w", err)
+		return nil, nil, fmt.Errorf("it cannot be opened: %w", err)
 	}
 	if other := f.claims.claim(f, info); other != "" {
 		root.Close()
-		return nil, fmt.Errorf("it is the folder of %s: give each authority its own", other)
+		return nil, nil, fmt.Errorf("it is the folder of %s: give each authority its own", other)
 	}
-	return root, nil
+	return root, info, nil
 }

@@ -43,7 +43,7 @@ const putOff = time.Second
 func (f *Folder) look(ctx context.Context, w *watch) (again time.Duration) {
 	f.problem = ""
 	defer func() { f.trouble(f.problem) }()
-	root, err := f.openFolder()
+	root, info, err := f.openFolder()
 	if err != nil {
 		w.gone()
 		f.seen(0, 0)
@@ -51,7 +51,7 @@ func (f *Folder) look(ctx context.Context, w *watch) (again time.Duration) {
 		return min(f.options.Rescan, putOff)
 	}
 	defer root.Close()
-	w.follow(root)
+	w.follow(info)
 	list, err := listed(root)
 	if err != nil {
 		f.problem = printable([]byte(err.Error()), 4*shownBytes)

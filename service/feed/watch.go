@@ -48,11 +48,10 @@ func newWatch(path string) *watch {
 	return w
 }
 
-// follow watches the folder that is open, if it is not the one watched
-// already: a folder made anew is another one.
-func (w *watch) follow(root *os.Root) {
-	info, err := root.Stat(".")
-	if w.w == nil || err != nil || w.dir != nil && os.SameFile(w.dir, info) {
+// follow watches the folder that stands there now, if it is not the one
+// watched already: a folder made anew is another one.
+func (w *watch) follow(info fs.FileInfo) {
+	if w.w == nil || w.dir != nil && os.SameFile(w.dir, info) {
 		return
 	}
 	_ = w.w.Remove(w.path) // it may be gone by itself
