@@ -178,6 +178,7 @@ func reasons(d Decision) string {
 	return strings.Join(out, "; ")
 }
 
+// BW-005
 func TestOpensWhenAllIsClear(t *testing.T) {
 	w := newWorld(t, siteRules(), openList(t))
 	if d := w.last[0]; d.Open {

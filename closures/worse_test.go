@@ -150,7 +150,7 @@ func TestWorseNeverOpens(t *testing.T) {
 	}
 }
 
-// Any field that is not a number shutters or is refused; it never opens.
+// Any field that is not a number shutters or is refused; it never opens. BW-004
 func TestNotANumberNeverOpens(t *testing.T) {
 	nan := math.NaN()
 	for name, body := range map[string]Body{

@@ -31,6 +31,7 @@ func TestFormatsAreTold(t *testing.T) {
 	}
 }
 
+// BW-013
 func TestEveryBadLineIsReported(t *testing.T) {
 	for _, n := range native {
 		text := undigested(t, n.format)

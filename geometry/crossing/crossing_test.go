@@ -23,7 +23,7 @@ func strict(v *volumes, s float64) float64 {
 	return 1.05*v.ball(s) + along/v.launch.Add(v.beam.Mul(s)).Sub(v.telescope).Norm()
 }
 
-// TestBruteForce compares with dense sampling of both volumes, 200,000 pairs.
+// TestBruteForce compares with dense sampling of both volumes, 200,000 pairs. BW-021
 func TestBruteForce(t *testing.T) {
 	type tally struct{ n, hits, way, near, differ int }
 	var (

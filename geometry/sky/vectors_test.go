@@ -110,7 +110,7 @@ func (s *spread) rms() float64 { return math.Sqrt(s.squares / float64(s.n)) }
 // motion (pyerfa 2.0.0.1): 300 rows over 2020-2035, all latitudes, both
 // hemispheres, some below the horizon, |UT1-UTC| to 0.9 s. Tolerance 0.5
 // arcsec, more than 5 degrees from the Sun, with the night prepared for the
-// row's instant and for 12 h before and after it.
+// row's instant and for 12 h before and after it. BW-020
 func TestERFA(t *testing.T) {
 	for _, shift := range []time.Duration{0, -12 * time.Hour, 12 * time.Hour} {
 		var all, nearSun spread

@@ -161,7 +161,7 @@ func randomBox(r *rand.Rand, az, el s1.Angle) geometry.Box {
 }
 
 // Against dense sampling, over every shape: nothing is missed, and every edge
-// is on the safe side and within the tolerance.
+// is on the safe side and within the tolerance. BW-019
 func TestBelowAgainstSampling(t *testing.T) {
 	cases := 104_000
 	if os.Getenv("BEAMWARD_LONG") != "" {

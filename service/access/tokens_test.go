@@ -220,6 +220,7 @@ func TestTokenFileThatOthersCanTouch(t *testing.T) {
 	}
 }
 
+// BW-030
 func TestSecretsDoNotPrint(t *testing.T) {
 	s := mint()
 	inside := struct {

@@ -113,6 +113,7 @@ var faults = map[string]string{
 	"zone-unknown":                  `line 1: site.time_zone: Atlantic/Skerry: name a zone of the IANA database, such as Atlantic/St_Helena, or UTC`,
 }
 
+// BW-027
 func TestEveryFaultIsToldWithItsMend(t *testing.T) {
 	if len(faults) < 40 {
 		t.Fatalf("only %d faults are tried", len(faults))

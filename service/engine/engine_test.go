@@ -43,7 +43,7 @@ func TestOpensWhenAllIsClear(t *testing.T) {
 }
 
 // Closing does not wait for anything: the view of the turn that takes the fact
-// is shuttered.
+// is shuttered. BW-007
 func TestClosesInTheSameTurn(t *testing.T) {
 	w := newSite(t, siteRules()).opened()
 	w.rec.set(func(s *slate) { s.held = true }) // the store sleeps
@@ -90,6 +90,7 @@ func TestAMomentsClosureIsSeen(t *testing.T) {
 	}
 }
 
+// BW-006
 func TestOpensOnlyWhenTheOpeningIsDurable(t *testing.T) {
 	w := newSite(t, siteRules())
 	w.step(0, closures.ListOffered{List: list(t, "2031-045-A"), By: "test"})
@@ -175,6 +176,7 @@ func TestClosedMeanwhileIsNotGranted(t *testing.T) {
 	}
 }
 
+// BW-025
 func TestStoreErrorCloses(t *testing.T) {
 	for name, spoil := range map[string]func(*Condition){
 		"failed":  func(c *Condition) { c.Failed = true },
@@ -398,6 +400,7 @@ type brokenRecord struct{ *slate }
 
 func (brokenRecord) Append([]Entry) error { panic("broken") }
 
+// BW-024
 func TestClockCloses(t *testing.T) {
 	for name, c := range map[string]struct {
 		spoil func(*ClockReport)

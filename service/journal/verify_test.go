@@ -94,7 +94,7 @@ func TestVerifyReports(t *testing.T) {
 }
 
 // Every byte of every body, digest, sum and text of a small record, flipped,
-// is found.
+// is found. BW-029
 func TestEveryFlippedByteIsFound(t *testing.T) {
 	dir, _ := small(t)
 	db := surgery(t, dir)

@@ -20,6 +20,7 @@ import (
 
 func TestMain(m *testing.M) { goleak.VerifyTestMain(m) }
 
+// BW-032
 func TestRoutes(t *testing.T) {
 	s := newStage()
 	i := issuer(t, s)

@@ -206,6 +206,7 @@ func TestOpenWithReasonsIsShuttered(t *testing.T) {
 	}
 }
 
+// BW-009
 func TestStaleIsShuttered(t *testing.T) {
 	const limit = 300 * time.Millisecond
 	for name, c := range map[string]struct {

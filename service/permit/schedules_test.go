@@ -234,7 +234,7 @@ func (s *schedule) read() error {
 }
 
 // No read of any permit is valid past the start of a foreseeable closure less
-// the margin time, and none is open before its opening is durable.
+// the margin time, and none is open before its opening is durable. BW-008
 func TestNoPermitOutlivesAForeseeableClosure(t *testing.T) {
 	schedules := 10_000
 	if hurried {
