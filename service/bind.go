@@ -41,7 +41,10 @@ func (s *Service) bind() error {
 	if err := s.bindAPI(guard, issuer, secure); err != nil {
 		return err
 	}
-	return s.bindFeeds(guard, secure)
+	if err := s.bindFeeds(guard, secure); err != nil {
+		return err
+	}
+	return s.upkeep()
 }
 
 func (s *Service) guard() (*access.Guard, error) {
