@@ -54,6 +54,21 @@ func (s *Service) bindFeed(f *config.Feed, guard *access.Guard, secure *tls.Conf
 		s.parts.closing = append(s.parts.closing, t.Close)
 		s.parts.run("feed "+f.Kind+" at "+t.Addr().String(), t.Run)
 		return t.Addr().String(), nil
+	case config.FactsUDP:
+		u, err := feed.ListenUDP(feed.UDPOptions{Options: o, Listen: f.Listen})
+		if err != nil {
+			return "", err
+		}
+		s.parts.closing = append(s.parts.closing, u.Close)
+		s.parts.run("feed "+f.Kind+" at "+u.Addr().String(), u.Run)
+		return u.Addr().String(), nil
+	case config.FactsFile:
+		t, err := feed.FollowFile(feed.FileOptions{Options: o, Path: f.File})
+		if err != nil {
+			return "", err
+		}
+		s.parts.run("feed "+f.Kind+" "+f.File, t.Run)
+		return "", nil
 	}
 	return "", fmt.Errorf("feeds: kind %s is not received by this build: take it out", f.Kind)
 }

@@ -83,6 +83,7 @@ func New(ctx context.Context, opt Options) (_ *Service, err error) {
 	if err := s.bind(); err != nil {
 		return nil, err
 	}
+	s.parts.run("second opinion", s.secondOpinion)
 	return s, nil
 }
 
