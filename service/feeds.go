@@ -6,14 +6,17 @@ import (
 	"crypto/tls"
 	"fmt"
 	"io"
+	"math/rand/v2"
 	"net/netip"
 	"os"
 
 	"beamward/closures"
 	"beamward/closures/listfile"
+	"beamward/geometry/encounter"
 	"beamward/service/access"
 	"beamward/service/config"
 	"beamward/service/feed"
+	"beamward/service/feed/modes"
 )
 
 // bindFeeds makes the ways in for facts and the watched folders of lists.
@@ -69,8 +72,32 @@ func (s *Service) bindFeed(f *config.Feed, guard *access.Guard, secure *tls.Conf
 		}
 		s.parts.run("feed "+f.Kind+" "+f.File, t.Run)
 		return "", nil
+	case config.ModeS:
+		m, err := feed.NewModeS(feed.ModeSOptions{
+			Intake: o.Intake, Clock: o.Clock, Notice: o.Notice, Dial: f.Dial, File: f.File, Jitter: rand.Float64,
+			Decoder: s.decoder(f.Sources[0]),
+		})
+		if err != nil {
+			return "", err
+		}
+		s.parts.run("feed "+f.Kind+" "+f.Dial+f.File, m.Run)
+		return "", nil
 	}
 	return "", fmt.Errorf("feeds: kind %s is not received by this build: take it out", f.Kind)
+}
+
+// decoder is how Mode S frames of a source are read: by the site's place and
+// the bounds of the rules.
+func (s *Service) decoder(source closures.Source) modes.Options {
+	r := s.cfg.Rules
+	o := modes.Options{
+		Source: source, Site: r.Site.Position, Geoid: r.Site.Geoid,
+		Motion: encounter.Motion{HorizontalAcceleration: r.Aircraft.HorizontalAccel, VerticalAcceleration: r.Aircraft.VerticalAccel, Speed: r.Aircraft.SpeedMax, Climb: r.Aircraft.ClimbMax},
+	}
+	if src := r.Source(source); src != nil {
+		o.PositionError, o.VelocityError, o.ClimbError = src.PositionError, src.VelocityError, src.VerticalVelocityErr
+	}
+	return o
 }
 
 func admission(s string) feed.Admission {
