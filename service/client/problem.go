@@ -4,6 +4,7 @@ import (
 	"io"
 	"net/http"
 	"strconv"
+	"strings"
 	"time"
 
 	"beamward/closures/wire"
@@ -27,13 +28,33 @@ func (p *Problem) Mend() string {
 	return ""
 }
 
-// Error gives title, detail and the first mend.
+// Error gives title, detail, the first thing that is wrong where it says more,
+// and the first mend.
 func (p *Problem) Error() string {
-	s := p.Problem.Error()
+	s := p.Title
+	if p.Detail != "" {
+		s += ": " + p.Detail
+	}
+	if len(p.Errors) > 0 && p.Errors[0].Detail != p.Detail && !strings.HasSuffix(p.Detail, p.Errors[0].Detail) {
+		s += ": " + where(&p.Errors[0]) + p.Errors[0].Detail
+	}
 	if m := p.Mend(); m != "" {
 		s += ": " + m
 	}
 	return s
+}
+
+// where says in what a thing is wrong.
+func where(e *wire.ProblemEntry) string {
+	switch {
+	case e.Line > 0:
+		return "line " + strconv.Itoa(e.Line) + ": "
+	case e.Pointer != "":
+		return e.Pointer + ": "
+	case e.Field != "":
+		return e.Field + ": "
+	}
+	return ""
 }
 
 // Temporary reports whether the same request may do later.
