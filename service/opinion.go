@@ -31,10 +31,12 @@ func (s *Service) recheck(ctx context.Context, updates <-chan engine.Update) {
 			v := u.View
 			for i := range v.Beams {
 				d := v.Beams[i].Decision
-				if !d.Open {
+				// What is known is copied at most ten times a second. A view between
+				// two copies cannot be judged; the next one is.
+				if !d.Open || v.Known == nil || !v.Known.At.Equal(d.At) {
 					continue
 				}
-				veto, against := c.Check(d, v.Known, v.Foreseen, v.Rules, v.At)
+				veto, against := c.Check(d, v.Known, v.Foreseen, v.Rules, d.At)
 				if !against {
 					continue
 				}
