@@ -89,6 +89,7 @@ func TestBadLineLeavesTheConnection(t *testing.T) {
 			t.Errorf("got %+v", h)
 		}
 	}
+	until(t, "all are counted", func() bool { return b.Stats().Accepted == 2 })
 	s := b.Stats()
 	if s.Accepted != 2 || s.Refused != 1 || s.Lines != 3 || s.Open != 1 || s.Connections != 1 || len(s.Refusals) != 1 {
 		t.Fatalf("stats: %+v", s)
@@ -153,6 +154,7 @@ func TestFullIntakeIsWaitedFor(t *testing.T) {
 	if _, ok := b.in.next(t).body.(closures.InterlockSeen); !ok {
 		t.Error("no interlock")
 	}
+	until(t, "all are counted", func() bool { return b.Stats().Accepted == 2 })
 	if s := b.Stats(); s.Waited != 1 || s.Refused != 0 || s.Dropped != 0 || s.Accepted != 2 {
 		t.Errorf("stats: %+v", s)
 	}
@@ -177,6 +179,7 @@ func TestRefusedByIntake(t *testing.T) {
 	b.in.answer(closures.Errorf(closures.NotFound, "name a configured source", "source: not configured"), 1)
 	say(t, b.dial(t), interlockLine("catwalk"), interlockLine("catwalk"))
 	b.in.next(t)
+	until(t, "all are counted", func() bool { return b.Stats().Accepted == 1 })
 	if s := b.Stats(); s.Refused != 1 || s.Accepted != 1 || s.Refusals[0].Cause != "source: not configured: name a configured source" {
 		t.Errorf("stats: %+v", s)
 	}
@@ -333,6 +336,7 @@ func TestAdmittedByToken(t *testing.T) {
 	say(t, c, `{"token":"good"}`, interlockLine("catwalk"), aircraftLine("rx-1", "a1b2c3"), interlockLine("elsewhere"), interlockLine("catwalk"))
 	b.in.next(t)
 	b.in.next(t)
+	until(t, "all are counted", func() bool { return b.Stats().Accepted == 2 })
 	if s := b.Stats(); s.Refused != 2 || s.Accepted != 2 {
 		t.Errorf("stats: %+v", s)
 	}

@@ -45,6 +45,7 @@ func TestUDPTakesLinesOfAircraft(t *testing.T) {
 			t.Errorf("got %+v", f)
 		}
 	}
+	until(t, "all are counted", func() bool { return u.Stats().Accepted == 2 })
 	if s := u.Stats(); s.Lines != 2 || s.Accepted != 2 || s.Open != 1 {
 		t.Errorf("%+v", s)
 	}
