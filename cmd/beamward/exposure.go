@@ -59,7 +59,7 @@ The numbers are aids to a competent person. They are no hazard evaluation.`,
 	from.on(c)
 	c.Flags().StringVar(&beam, "beam", "", "the beam, where there are several")
 	c.Flags().StringVar(&elevations, "elevations", "", "elevations in degrees, such as 30,60,90; left out: the beam's lowest, 45 and 90")
-	c.Flags().StringVar(&edition, "edition", "strictest", "whose limits for short pulses: strictest, 2006 or 2014")
+	choice(c, &edition, "edition", "strictest", "whose limits for short pulses", "strictest", "2006", "2014")
 	c.Flags().DurationVar(&pulse, "pulse", 0, "length of a pulse, such as 200ns; 0: continuous")
 	c.Flags().Float64Var(&repetition, "repetition-hz", 0, "pulses a second")
 	c.Flags().DurationVar(&exposed, "exposure", 0, "how long an eye is in the beam; 0: until it turns away, 250ms")

@@ -62,7 +62,7 @@ func holdPlaceCommand(out *console, from *serverFlags) *cobra.Command {
 	c.Flags().DurationVar(&lasts, "for", 0, "how long it lasts, instead of --until")
 	c.Flags().StringVar(&icrs, "icrs", "", "only about a direction: ra_deg,dec_deg,radius_deg")
 	c.Flags().StringVar(&horizon, "horizon", "", "only between az_from_deg,az_to_deg,el_from_deg,el_to_deg")
-	c.Flags().StringVar(&h.Order, "order", "site", "whose order it is: site or authority; an authority's is released by a second person")
+	choice(c, &h.Order, "order", "site", "whose order it is; an authority's is released by a second person", "site", "authority")
 	c.Flags().StringVar(&h.Caller, "caller", "", "who called")
 	c.Flags().StringVar(&h.CallBack, "call-back", "", "where they can be called back")
 	return c

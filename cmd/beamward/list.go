@@ -66,7 +66,7 @@ func listAddCommand(out *console, from *serverFlags) *cobra.Command {
 		},
 	}
 	c.Flags().StringVar(&layout, "layout", "", "read the files by this layout `file` and send what was understood")
-	c.Flags().StringVar(&format, "format", "auto", "how the text is written: auto, yaml, json or csv; auto goes by the name, then by the text")
+	choice(c, &format, "format", "auto", "how the text is written, where its name does not say it", "auto", "yaml", "json", "csv")
 	return c
 }
 

@@ -53,9 +53,9 @@ func listShowCommand(out *console, from *serverFlags) *cobra.Command {
 			return writeList(out, &l)
 		},
 	}
-	c.Flags().StringVar(&status, "status", "", "only these: waiting, in-force, replaced or withdrawn")
+	choice(c, &status, "status", "", "only lists of a status", "waiting", "in-force", "replaced", "withdrawn")
 	c.Flags().StringVar(&authority, "authority", "", "only this authority's")
-	c.Flags().StringVar(&format, "format", "table", "of one list: table, or the list itself as yaml or csv")
+	choice(c, &format, "format", "table", "of one list, the list itself where yaml or csv", "table", "yaml", "csv")
 	return c
 }
 

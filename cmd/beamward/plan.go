@@ -69,7 +69,7 @@ running service plans on what is in force. A plan names what it left out.`,
 	c.Flags().StringVar(&begin, "from", "", "begin, YYYY-MM-DDThh:mm:ssZ; left out: now")
 	c.Flags().StringVar(&end, "until", "", "end; left out: 12 hours later")
 	c.Flags().StringVar(&ask.lists, "lists", "", "a `folder` with more closure lists")
-	c.Flags().StringVar(&ask.format, "format", "table", "table, json, csv or ics")
+	choice(c, &ask.format, "format", "table", "how the plan is written", "table", "json", "csv", "ics")
 	return c
 }
 

@@ -25,8 +25,9 @@ func serveCommand(out *console) *cobra.Command {
 		Use:   "serve --config FILE",
 		Short: "Run the daemon",
 		Long: `Runs the daemon until SIGTERM or SIGINT. The first line of its log, on stderr, names
-the addresses that it bound. SIGHUP reads the configuration again; one that cannot
-be met changes nothing.`,
+the addresses that it bound. SIGHUP reads the configuration again: what only tightens
+takes effect, anything else takes a restart, and one that cannot be met changes
+nothing.`,
 		Args: cobra.NoArgs,
 		RunE: func(c *cobra.Command, _ []string) error {
 			if err := oneOf("log-level", level, "debug", "info", "warn", "error"); err != nil {
@@ -42,7 +43,7 @@ be met changes nothing.`,
 		},
 	}
 	from.on(c)
-	c.Flags().StringVar(&level, "log-level", "info", "least level of the log: debug, info, warn or error")
+	choice(c, &level, "log-level", "info", "least level of the log", "debug", "info", "warn", "error")
 	return c
 }
 
@@ -100,7 +101,7 @@ func reloads(ctx context.Context, s *service.Service, from *configFlag, log *slo
 		}
 		cfg, err := from.load()
 		if err == nil {
-			err = reload(ctx, s, cfg)
+			err = s.Reload(ctx, cfg, "sighup")
 		}
 		if err != nil {
 			for _, line := range strings.Split(err.Error(), "\n") {
@@ -110,18 +111,6 @@ func reloads(ctx context.Context, s *service.Service, from *configFlag, log *slo
 		}
 		log.Info("the configuration was read again", "rules", cfg.Rules.Digest.String())
 	}
-}
-
-// reloader is a service that can take another configuration while it runs.
-type reloader interface {
-	Reload(context.Context, *config.Config) error
-}
-
-func reload(ctx context.Context, s any, cfg *config.Config) error {
-	if r, can := s.(reloader); can {
-		return r.Reload(ctx, cfg)
-	}
-	return errors.New("this build takes a configuration at its start only: restart it")
 }
 
 // heldWriter keeps what is written until it is let go, so that one line can

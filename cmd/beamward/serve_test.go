@@ -255,3 +255,52 @@ func TestTellsSystemd(t *testing.T) {
 		}
 	}
 }
+
+// SIGHUP puts a configuration in force that only tightens. One that loosens or
+// cannot be met is told with its keys, and what was in force stays.
+func TestHangup(t *testing.T) {
+	t.Parallel()
+	_, config := quickSite(t)
+	p, err := launch(config)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer func() { _ = p.end(syscall.SIGKILL) }()
+	for _, step := range []struct{ old, new, told string }{
+		{"elevation_min_deg: 30", "elevation_min_deg: 35", "the configuration was read again"},
+		{"elevation_min_deg: 35", "elevation_min_deg: 20", "elevation_min_deg"},
+		{"elevation_min_deg: 20", "elevation_min_deg: 95", "make it 0 to 90"},
+	} {
+		text, err := os.ReadFile(config)
+		if err != nil {
+			t.Fatal(err)
+		}
+		changed := strings.Replace(string(text), step.old, step.new, 1)
+		if changed == string(text) {
+			t.Fatalf("the site has no %q", step.old)
+		}
+		if err := os.WriteFile(config, []byte(changed), 0o600); err != nil {
+			t.Fatal(err)
+		}
+		if err := p.cmd.Process.Signal(syscall.SIGHUP); err != nil {
+			t.Fatal(err)
+		}
+		for deadline := time.Now().Add(patience); !strings.Contains(p.log.String(), step.told); time.Sleep(10 * time.Millisecond) {
+			if time.Now().After(deadline) {
+				t.Fatalf("after %s the log does not tell %q:\n%s", step.new, step.told, p.log)
+			}
+		}
+	}
+	var b struct {
+		Least float64 `json:"elevation_min_deg"`
+	}
+	if err := get(p.api+"/v1/beams/north", &b); err != nil {
+		t.Fatal(err)
+	}
+	if b.Least != 35 {
+		t.Errorf("in force is %v, not 35", b.Least)
+	}
+	if err := p.end(syscall.SIGTERM); err != nil {
+		t.Error(err)
+	}
+}

@@ -84,7 +84,7 @@ func tokenAddCommand(out *console, at *tokenPlace) *cobra.Command {
 			return nil
 		},
 	}
-	c.Flags().StringVar(&role, "role", "", "what it may do: read, feed, operate or admin")
+	choice(c, &role, "role", "", "what it may do", "read", "feed", "operate", "admin")
 	c.Flags().StringSliceVar(&sources, "source", nil, "a source, beam, neighbour or post that it may speak for; again for more")
 	return c
 }

@@ -86,6 +86,14 @@ func oneOf(flag, value string, words ...string) error {
 	return usagef("--%s %.40q: make it %s", flag, value, either(words))
 }
 
+// choice makes a flag that is one of some words, for the shell's completion;
+// oneOf checks it.
+func choice(c *cobra.Command, value *string, flag, def, usage string, words ...string) {
+	c.Flags().StringVar(value, flag, def, usage+": "+either(words))
+	// It fails only for a flag that does not exist or has one already.
+	_ = c.RegisterFlagCompletionFunc(flag, cobra.FixedCompletions(words, cobra.ShellCompDirectiveNoFileComp))
+}
+
 // either writes "a, b or c".
 func either(words []string) string {
 	if len(words) < 2 {
