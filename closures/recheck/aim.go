@@ -9,14 +9,9 @@ import (
 // aim is one beam's aim and how surely it is known.
 type aim struct {
 	*closures.Aim
-	site  place
-	pad   float64 // from the aim to the farthest light: errors and asterism
-	error float64 // the errors alone
+	site place
+	pad  float64 // from the aim to the farthest light: errors and asterism
 }
-
-// fixed reports whether the aim is stated against the stars, so that ICRS
-// regions are compared with it directly.
-func (a *aim) fixed() bool { return a.Frame == closures.ICRS || a.Frame == closures.Table }
 
 // own is the aim in its own frame at an instant.
 func (a *aim) own(at time.Time) (point, bool) {

@@ -150,8 +150,7 @@ func (l *look) pointing() string {
 	if l.now, ok = l.aim.local(l.at); !ok {
 		return "second opinion: the aim does not reach to now"
 	}
-	l.aim.error = (k.AimUsed.Error + r.Aim.Error).Radians()
-	l.aim.pad = l.aim.error + r.Asterism.Radians()
+	l.aim.pad = (k.AimUsed.Error + r.Aim.Error + r.Asterism).Radians()
 	if !(l.aim.pad >= 0) {
 		return "second opinion: the aim's error is not a number"
 	}
