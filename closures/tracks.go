@@ -1,6 +1,7 @@
 package closures
 
 import (
+	"cmp"
 	"math"
 	"slices"
 	"time"
@@ -42,11 +43,12 @@ type track struct {
 	seen    AircraftSeen // the newest
 	heard   time.Time
 	reaches [mostReports]encounter.Reach
-	n       int  // of reaches; 0: not located
-	lost    bool // more than mostReports contradict: anywhere
-	inside  bool // last seen within the detection range
-	popup   bool // first reported where it could already touch
-	ground  bool // says that it is on the ground
+	reports [mostReports]AircraftSeen // that the reaches were made of
+	n       int                       // of reaches; 0: not located
+	lost    bool                      // more than mostReports contradict: anywhere
+	inside  bool                      // last seen within the detection range
+	popup   bool                      // first reported where it could already touch
+	ground  bool                      // says that it is on the ground
 }
 
 // aircraftExtent is how far an aircraft reaches from its reported point:
@@ -202,21 +204,23 @@ func (t *tracks) take(f *AircraftSeen, src *SourceRules, r *Rules, at time.Time)
 		k.inside = !(far > float64(r.Aircraft.DetectionRange))
 	}
 	next := encounter.Of(&report, &t.motion)
-	kept := k.reaches[:0]
+	kept := 0
 	for j := 0; j < k.n; j++ {
 		if !encounter.Replaces(&k.reaches[j], &report) {
-			kept = append(kept, k.reaches[j])
+			k.reaches[kept], k.reports[kept] = k.reaches[j], k.reports[j]
+			kept++
 		}
 	}
 	// An older report that arrives late adds its reach unless a newer one
 	// already answers for the aircraft and could have grown out of it.
-	if len(kept) == mostReports {
+	if kept == mostReports {
 		k.lost = true
 	} else {
-		kept = append(kept, next)
+		k.reaches[kept], k.reports[kept] = next, *f
+		kept++
 	}
-	k.n = len(kept)
-	if len(kept) == 1 {
+	k.n = kept
+	if kept == 1 {
 		k.lost = false
 	}
 	t.quiet[i] = t.quietUntil(k)
@@ -304,29 +308,26 @@ func (s *State) applyTrackReleased(f TrackReleased, at time.Time) *Error {
 	return nil
 }
 
-// durable returns the tracks that must outlive a restart, those lost inside
-// the detection range, in order.
+// durable returns what must outlive a restart of the tracks that were last
+// seen inside the detection range: every report whose reach still counts, and
+// of a track whose reports contradict each other too often the newest as well,
+// so that taking them in again finds the same. In order.
 func (t *tracks) durable() []DurableTrack {
 	var out []DurableTrack
 	for i := range t.list {
-		if k := &t.list[i]; k.inside && k.n > 0 {
+		k := &t.list[i]
+		if !k.inside || k.n == 0 {
+			continue
+		}
+		for j := 0; j < k.n; j++ {
+			out = append(out, DurableTrack{Seen: k.reports[j], Heard: k.heard})
+		}
+		if k.lost && k.seen.Located {
 			out = append(out, DurableTrack{Seen: k.seen, Heard: k.heard})
 		}
 	}
-	slices.SortFunc(out, func(a, b DurableTrack) int {
-		if a.Seen.Aircraft != b.Seen.Aircraft {
-			if a.Seen.Aircraft < b.Seen.Aircraft {
-				return -1
-			}
-			return 1
-		}
-		if a.Seen.Source < b.Seen.Source {
-			return -1
-		}
-		if a.Seen.Source > b.Seen.Source {
-			return 1
-		}
-		return 0
+	slices.SortStableFunc(out, func(a, b DurableTrack) int {
+		return cmp.Or(cmp.Compare(a.Seen.Aircraft, b.Seen.Aircraft), cmp.Compare(a.Seen.Source, b.Seen.Source))
 	})
 	return out
 }

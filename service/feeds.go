@@ -16,6 +16,7 @@ import (
 	"beamward/service/access"
 	"beamward/service/config"
 	"beamward/service/feed"
+	"beamward/service/feed/asterix"
 	"beamward/service/feed/modes"
 )
 
@@ -82,6 +83,21 @@ func (s *Service) bindFeed(f *config.Feed, guard *access.Guard, secure *tls.Conf
 		}
 		s.parts.run("feed "+f.Kind+" "+f.Dial+f.File, m.Run)
 		return "", nil
+	case config.Asterix021:
+		d := s.decoder(f.Sources[0])
+		a, err := feed.ListenAsterix(feed.AsterixOptions{
+			Intake: o.Intake, Clock: o.Clock, Notice: o.Notice, Listen: f.Listen,
+			Decoder: asterix.Options{
+				Source: d.Source, Edition: f.Edition, Geoid: d.Geoid, Motion: d.Motion,
+				PositionError: d.PositionError, VelocityError: d.VelocityError, ClimbError: d.ClimbError,
+			},
+		})
+		if err != nil {
+			return "", err
+		}
+		s.parts.closing = append(s.parts.closing, a.Close)
+		s.parts.run("feed "+f.Kind+" at "+a.Addr().String(), a.Run)
+		return a.Addr().String(), nil
 	}
 	return "", fmt.Errorf("feeds: kind %s is not received by this build: take it out", f.Kind)
 }
