@@ -60,6 +60,10 @@ func logHandler(w io.Writer, asJSON bool, level string) slog.Handler {
 // serve runs the service until ctx ends.
 func serve(ctx context.Context, out *console, from *configFlag, cfg *config.Config, log *slog.Logger, held *heldWriter) error {
 	defer held.release()
+	// Caught from the very start: one that came early must not end the daemon.
+	hup := make(chan os.Signal, 1)
+	signal.Notify(hup, syscall.SIGHUP)
+	defer signal.Stop(hup)
 	notify := newNotifier(log)
 	s, err := service.New(ctx, service.Options{Config: cfg, Log: log, Build: thisBuild().String(), Watchdog: notify.watchdog()})
 	if err != nil {
@@ -77,7 +81,7 @@ func serve(ctx context.Context, out *console, from *configFlag, cfg *config.Conf
 	told := context.AfterFunc(ctx, notify.stopping)
 	defer told()
 	beside.Go(func() { notify.run(running, s.Engine()) })
-	beside.Go(func() { reloads(running, s, from, log) })
+	beside.Go(func() { reloads(running, hup, s, from, log) })
 	err = s.Run(ctx)
 	stop()
 	beside.Wait()
@@ -89,10 +93,7 @@ func serve(ctx context.Context, out *console, from *configFlag, cfg *config.Conf
 }
 
 // reloads reads the configuration again at each SIGHUP until ctx ends.
-func reloads(ctx context.Context, s *service.Service, from *configFlag, log *slog.Logger) {
-	hup := make(chan os.Signal, 1)
-	signal.Notify(hup, syscall.SIGHUP)
-	defer signal.Stop(hup)
+func reloads(ctx context.Context, hup <-chan os.Signal, s *service.Service, from *configFlag, log *slog.Logger) {
 	for {
 		select {
 		case <-ctx.Done():
