@@ -26,6 +26,15 @@ const (
 	deep         = `{"beam":"north","reason":"x","region":`
 )
 
+// manyTargets are rows of a table that are good.
+func manyTargets(n int) string {
+	var b strings.Builder
+	for i := range n {
+		fmt.Fprintf(&b, "target-%d,1,1\n", i)
+	}
+	return b.String()
+}
+
 func badRequests() []bad {
 	out := []bad{
 		// Paths and methods.
@@ -57,7 +66,7 @@ func badRequests() []bad {
 		{415, "", "POST", "/v1/holds", "{}", "Content-Type: application/json; boundary=x"}, {415, "", "POST", "/v1/holds", "{}", "Content-Encoding: gzip"}, {415, "", "POST", "/v1/facts", "{}", ""}, {415, "", "POST", "/v1/lists", "x", "Content-Type: image/png"},
 		{415, "", "POST", "/v1/plan?beam=north", "x", "Content-Type: application/yaml"}, {415, "", "POST", "/v1/holds", "{}", "Content-Type: application/x-www-form-urlencoded"},
 		{413, "", "POST", "/v1/holds", `{"beam":"north","reason":"` + strings.Repeat("a", 70_000) + `"}`, ""}, {413, "", "POST", "/v1/beams/north/rearm", strings.Repeat(" ", 70_000), ""}, {413, "", "POST", "/v1/facts", strings.Repeat("\n", 2<<20), ndjsonHeader},
-		{413, "", "POST", "/v1/plan?beam=north", "name,ra_deg,dec_deg\n" + strings.Repeat("a,1,1\n", 400_000), csvHeader},
+		{413, "", "POST", "/v1/plan?beam=north", "name,ra_deg,dec_deg\n" + manyTargets(100_000), csvHeader},
 		// JSON.
 		{400, "", "POST", "/v1/holds", ``, "Content-Type: application/json"}, {400, "", "POST", "/v1/holds", `null x`, ""}, {400, "", "POST", "/v1/holds", `[]`, ""}, {400, "", "POST", "/v1/holds", `"x"`, ""}, {400, "", "POST", "/v1/holds", `{`, ""},
 		{400, "", "POST", "/v1/holds", `{"beam":"north","reason":"x"} {}`, ""}, {400, "", "POST", "/v1/holds", `{"beam":"north","reason":"x",}`, ""}, {400, "", "POST", "/v1/holds", `{'beam':'north'}`, ""},

@@ -56,11 +56,26 @@ func (c *call) takes() string {
 
 // body returns the request's body, held to a number of bytes and a time. The
 // answer has its own time after that.
-func (c *call) body(limit int64, within time.Duration) io.Reader {
+func (c *call) body(limit int64, within time.Duration) *incoming {
 	control, now := http.NewResponseController(c.w), time.Now()
 	_ = control.SetReadDeadline(now.Add(within))
 	_ = control.SetWriteDeadline(now.Add(within + c.api.limits.Answer))
-	return http.MaxBytesReader(c.w, c.r.Body, limit)
+	return &incoming{in: http.MaxBytesReader(c.w, c.r.Body, limit)}
+}
+
+// incoming is a body that remembers why it could not be read on, which its
+// reader may have told as something else.
+type incoming struct {
+	in  io.Reader
+	err error
+}
+
+func (b *incoming) Read(p []byte) (int, error) {
+	n, err := b.in.Read(p)
+	if err != nil && err != io.EOF {
+		b.err = err
+	}
+	return n, err
 }
 
 // longer gives the request another while, once its body is read. A connection on which reading

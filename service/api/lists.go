@@ -59,6 +59,9 @@ func (c *call) readList() (*closures.List, listfile.Report, error) {
 	}
 	body := c.body(c.api.limits.List, c.api.limits.LongTime)
 	l, report, err := listfile.Load(body, format, listfile.Limits{Bytes: c.api.limits.List})
+	if body.err != nil {
+		return nil, report, body.err
+	}
 	var bad *listfile.Refusal
 	if errors.As(err, &bad) {
 		return nil, report, listRefused(bad)

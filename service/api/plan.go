@@ -39,15 +39,26 @@ func planRoutes() []route {
 	}
 }
 
-// targetBody is one target of a table in JSON. Positions are ICRS.
+// targetBody is one target of a table in JSON, as the document shows it; the
+// planner's own reader reads it. It is a direction (ICRS, with a proper motion
+// or a rate), a local direction, or a table.
 type targetBody struct {
-	Name     string   `json:"name" minLength:"1" maxLength:"128"`
-	RA       float64  `json:"ra_deg" minimum:"0" maximum:"360"`
-	Dec      float64  `json:"dec_deg" minimum:"-90" maximum:"90"`
-	PMRA     *float64 `json:"pm_ra_mas_yr,omitempty" doc:"times cos(dec)"`
-	PMDec    *float64 `json:"pm_dec_mas_yr,omitempty"`
-	Length   *float64 `json:"length_s,omitempty"`
-	Priority *float64 `json:"priority,omitempty"`
+	Name      string      `json:"name" minLength:"1" maxLength:"128"`
+	RA        *float64    `json:"ra_deg,omitempty" minimum:"0" maximum:"360"`
+	Dec       *float64    `json:"dec_deg,omitempty" minimum:"-90" maximum:"90"`
+	PMRA      *float64    `json:"pm_ra_mas_yr,omitempty" doc:"on the sky, times cos(dec)"`
+	PMDec     *float64    `json:"pm_dec_mas_yr,omitempty"`
+	RateRA    *float64    `json:"rate_ra_arcsec_s,omitempty" doc:"on the sky, times cos(dec)"`
+	RateDec   *float64    `json:"rate_dec_arcsec_s,omitempty"`
+	RateAt    *time.Time  `json:"rate_at,omitempty" doc:"when it is at ra_deg and dec_deg"`
+	Az        *float64    `json:"az_deg,omitempty" minimum:"0" maximum:"360"`
+	El        *float64    `json:"el_deg,omitempty" minimum:"-90" maximum:"90"`
+	Refracted *bool       `json:"refracted,omitempty" doc:"of a local direction: as seen through the air"`
+	Table     []pointBody `json:"table,omitempty" doc:"where it is at instants; nowhere outside them"`
+	Length    *float64    `json:"length_s,omitempty"`
+	Priority  *float64    `json:"priority,omitempty"`
+	MinSpan   *float64    `json:"min_span_s,omitempty"`
+	Reacquire *float64    `json:"reacquire_s,omitempty"`
 }
 
 // PlanHead says what a plan is for. It stands before the targets.
@@ -71,6 +82,7 @@ type targetDoc struct {
 	Name     string         `json:"name"`
 	Allowed  []spanDoc      `json:"allowed"`
 	AllowedS float64        `json:"allowed_s"`
+	Usable   []spanDoc      `json:"usable" doc:"of the allowed spans, less the time to acquire, those that are long enough for the target"`
 	Blocked  []closureDoc   `json:"blocked"`
 	Cautions []wire.Caution `json:"cautions"`
 	Error    string         `json:"error,omitempty" doc:"it could not be planned, and is allowed at no time"`
@@ -79,13 +91,13 @@ type targetDoc struct {
 func leftOut() []string { return (closures.AllCodes &^ closures.ForeseeableCodes()).Names() }
 
 func targetOf(name string, p *planned) targetDoc {
-	out := targetDoc{Name: name, Allowed: []spanDoc{}, Blocked: []closureDoc{}, Cautions: []wire.Caution{}}
+	out := targetDoc{Name: name, Allowed: []spanDoc{}, Usable: []spanDoc{}, Blocked: []closureDoc{}, Cautions: []wire.Caution{}}
 	if p.err != nil {
 		r, _ := refusalOf(p.err)
 		out.Error = r.Detail
 		return out
 	}
-	out.Allowed, out.AllowedS = spansOf(p.Spans), p.Spans.Total().Seconds()
+	out.Allowed, out.AllowedS, out.Usable = spansOf(p.Spans), p.Spans.Total().Seconds(), spansOf(p.Usable)
 	for i := range p.Blocked {
 		it := itemOf("", &p.Blocked[i])
 		out.Blocked = append(out.Blocked, closureOf(&it))
@@ -127,8 +139,12 @@ func (c *call) plan() error {
 		return err
 	}
 	defer give()
-	targets, err := plan.ReadTargets(c.body(c.api.limits.Targets, c.api.limits.LongTime))
-	if err != nil {
+	body := c.body(c.api.limits.Targets, c.api.limits.LongTime)
+	targets, err := plan.ReadTargets(body)
+	switch {
+	case body.err != nil:
+		return body.err
+	case err != nil:
 		return targetsRefused(err)
 	}
 	c.longer(c.api.limits.Answer)

@@ -81,7 +81,7 @@ func (c *call) over(length time.Duration) (span.Span, error) {
 
 // planned is what one target can have, or why it was not planned.
 type planned struct {
-	plan.Allowed
+	plan.Planned
 	err error
 }
 
@@ -98,7 +98,7 @@ func each(p *plan.Planner, targets []plan.Target, take func(i int, out *planned)
 		for w := range workers {
 			wait.Go(func() {
 				for i := w; i < len(part); i += workers {
-					out[i].Allowed, out[i].err = p.One(part[i].Aim, &scratch[w])
+					out[i].Planned, out[i].err = p.Target(&part[i], &scratch[w])
 				}
 			})
 		}

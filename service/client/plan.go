@@ -44,6 +44,7 @@ type Target struct {
 	Name     string         `json:"name"`
 	Allowed  []Span         `json:"allowed"`
 	AllowedS float64        `json:"allowed_s"`
+	Usable   []Span         `json:"usable"` // of the allowed spans, what serves the target
 	Blocked  []Closure      `json:"blocked"`
 	Cautions []wire.Caution `json:"cautions"`
 	Error    string         `json:"error"` // it could not be planned
