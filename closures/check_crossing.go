@@ -2,6 +2,7 @@ package closures
 
 import (
 	"math"
+	"slices"
 	"time"
 
 	"beamward/geometry"
@@ -81,7 +82,7 @@ func (f *Foreseen) cross(q *Question, n *NeighbourRules, sh *Sheet, least *Margi
 	case silent:
 		sh.caution(n, "the neighbour is silent; its last pointing counts")
 	}
-	f.crossPointing(q, n, p, sh, least)
+	f.crossPointing(q, n, p, nil, sh, least)
 }
 
 // crossPlanned is cross for a plan. Who is silent matters to a decision; a plan
@@ -108,7 +109,7 @@ func (f *Foreseen) crossPlanned(q *Question, up span.Set, n *NeighbourRules, sh 
 		part := *q
 		for _, s := range up {
 			if part.Over = s.Intersect(over); !part.Over.Empty() {
-				f.crossPointing(&part, n, p, sh, least)
+				f.crossPointing(&part, n, p, q.Shared.passages(q, i), sh, least)
 			}
 		}
 	}
@@ -153,29 +154,33 @@ func (s *Sheet) unknownCrossing(q *Question, n *NeighbourRules, least *Margin, d
 	least.Value = math.NaN()
 }
 
+// caution says something of a neighbour, once.
 func (s *Sheet) caution(n *NeighbourRules, detail string) {
-	s.Cautions = append(s.Cautions, Caution{Code: CodeFieldCrossing, Source: Source(n.ID), Detail: detail})
+	c := Caution{Code: CodeFieldCrossing, Source: Source(n.ID), Detail: detail}
+	if !slices.Contains(s.Cautions, c) {
+		s.Cautions = append(s.Cautions, c)
+	}
 }
 
-// crossPointing finds when the beam may be in the field at one pointing.
-func (f *Foreseen) crossPointing(q *Question, n *NeighbourRules, p *Pointing, sh *Sheet, least *Margin) {
+// crossPointing finds when the beam may be in the field at one pointing. ready
+// are its passages where they are at hand.
+func (f *Foreseen) crossPointing(q *Question, n *NeighbourRules, p *Pointing, ready []passage, sh *Sheet, least *Margin) {
 	if n.OnlyExposing && p.Seen.Exposing == No {
 		return
 	}
 	if n.Yields == YieldsLater && !q.AimBegan.IsZero() && q.AimBegan.Before(p.AimBegan) {
 		return // theirs began later
 	}
-	passages, ok := q.Shared.passages(q, p)
-	if !ok {
+	if ready == nil {
 		var err error
-		if passages, err = f.passages(sh.passages[:0], q, n, p); err != nil {
+		if ready, err = f.passages(sh.passages[:0], q, n, p); err != nil {
 			sh.unknownCrossing(q, n, least, "the geometry of the neighbour and the beam cannot be told")
 			return
 		}
-		sh.passages = passages
+		sh.passages = ready
 	}
-	for i := range passages {
-		f.crossPassage(q, n, p, &passages[i], sh, least)
+	for i := range ready {
+		f.crossPassage(q, n, p, &ready[i], sh, least)
 	}
 }
 
@@ -265,7 +270,7 @@ func (f *Foreseen) crossPassage(q *Question, n *NeighbourRules, p *Pointing, o *
 		return m, rate
 	}
 	found := Finding{Code: CodeFieldCrossing, Source: Source(n.ID), Verdict: Violated, Margin: Margin{Unit: Radian}, Detail: "the beam crosses the field of a neighbour telescope"}
-	sh.scratch[0] = q.searchRated(sh.scratch[0], q.Over, margin)
+	sh.scratch[0] = q.searchRated(sh.scratch[0], q.Over, p.Aim.reach(q.Aim.reach(q.Over)), margin)
 	for _, s := range sh.scratch[0] {
 		found.Over = s
 		sh.add(found)
@@ -281,11 +286,13 @@ func (f *Foreseen) crossPassage(q *Question, n *NeighbourRules, p *Pointing, o *
 
 // fromTheirs turns an aim stated by azimuth and elevation at a neighbour into
 // our frame.
-func (s *State) fromTheirs(n *NeighbourRules, a *Aim) *Aim {
+func (s *State) fromTheirs(n *NeighbourRules, a *Aim) *Aim { return s.rules.fromTheirs(n, a) }
+
+func (r *Rules) fromTheirs(n *NeighbourRules, a *Aim) *Aim {
 	if a == nil || a.Frame != Horizon || n.Offset == (r3.Vector{}) {
 		return a
 	}
-	ours := earth.FrameAt(s.rules.Site.Position)
+	ours := earth.FrameAt(r.Site.Position)
 	there := earth.FromECEF(ours.ECEF(n.Offset))
 	turned := *a
 	turned.Direction = crossing.Turn(a.Direction, earth.FrameAt(there), ours)

@@ -256,6 +256,12 @@ func (h *Hits) Along(f *Foreseen, q *Question) *Hits {
 	return h
 }
 
+// Regions returns the regions of a list, by its index, that were found.
+func (h *Hits) Regions(list int) []int32 {
+	found, _ := h.of(list)
+	return found
+}
+
 // find looks for the regions within reach of a direction.
 func (h *Hits) find(f *Foreseen, centre r3.Vector, reach float64) {
 	h.centre = centre

@@ -87,7 +87,9 @@ func (daylight) Look(f *Foreseen, q *Question, sh *Sheet) {
 		d := n.Sun(at)
 		return limit.Radians() - math.Atan2(d.Z, math.Hypot(d.X, d.Y)) - sky.SunError.Radians()
 	}
-	for _, s := range q.sky(sky.SunRate, false, margin, sh) {
+	sun := *q
+	sun.Aim = nil // the Sun is there wherever the aim is
+	for _, s := range sun.sky(sky.SunRate, false, margin, sh) {
 		sh.add(Finding{Code: CodeDaylight, Verdict: Violated, Over: s, Detail: "the Sun is above the beam's limit"})
 	}
 	least := UnknownMargin()

@@ -276,9 +276,12 @@ func (f *Foreseen) passage(q *Question, n *NeighbourRules, p *Pointing, l *Launc
 	if err != nil {
 		return passage{}, err
 	}
+	if !q.Now.IsZero() || !q.Aim.followsSky() || !p.Aim.followsSky() {
+		return passage{pair: pair}, nil
+	}
 	sin, cos := math.Sincos(f.Rules.Site.Position.Lat.Radians())
 	o := passage{
-		pair: pair, parts: parts, followSky: q.Aim.followsSky() && p.Aim.followsSky(),
+		pair: pair, parts: parts, followSky: true,
 		pole: r3.Vector{Y: cos, Z: sin}, w: l.Offset.Sub(n.Offset),
 		radius: float64(beam.Radius + telescope.Aperture/2), grow: float64(beam.Spread + beam.AimError),
 		keep:      float64(2*beam.Radius + telescope.Aperture/2),

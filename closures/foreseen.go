@@ -39,6 +39,22 @@ type Pointing struct {
 	During    span.Span // when the pointing counts; zero: at any time
 }
 
+// Prepared brings an aim to what the checks use: airless, and fixed to the
+// stars where it tracks but was stated by azimuth and elevation without rates.
+// ok is false when it cannot be, as for want of its night.
+func (f *Foreseen) Prepared(a *Aim, nights []*sky.Night) (used *Aim, ok bool) {
+	if a == nil {
+		return nil, false
+	}
+	return prepared(a, nightAt(nights, a.Reference), f.Air)
+}
+
+// PreparedAt is Prepared for an aim that a neighbour telescope states: an
+// azimuth and elevation are those at its place.
+func (f *Foreseen) PreparedAt(n *NeighbourRules, a *Aim, nights []*sky.Night) (used *Aim, ok bool) {
+	return f.Prepared(f.Rules.fromTheirs(n, a), nights)
+}
+
 // ForeseeableCheck answers over a span for an aim. The planner and the
 // decision ask the same checks. Look writes the check's answer and findings
 // on the sheet; what it does not finish stays Unknown.

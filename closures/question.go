@@ -47,22 +47,28 @@ func (q *Question) err() s1.Angle { return q.Aim.Error + q.Beam.Aim.Error }
 func (q *Question) extent() s1.Angle { return q.err() + q.Beam.Asterism }
 
 // search returns when margin may be used up within over, with every part of
-// it that no night covers. The margin is given the night that holds the
-// instant.
+// it that no night covers or the aim does not reach. The margin is given the
+// night that holds the instant.
 func (q *Question) search(dst span.Set, rate float64, over span.Span, margin func(n *sky.Night, at time.Time) float64) span.Set {
 	less := rate * q.Slack.Seconds()
-	return q.searchRated(dst, over, func(n *sky.Night, at time.Time) (float64, float64) { return margin(n, at) - less, rate })
+	return q.searchRated(dst, over, q.Aim.reach(over), func(n *sky.Night, at time.Time) (float64, float64) { return margin(n, at) - less, rate })
 }
 
 // searchRated is search for a margin that states its rate with each value, and
-// from which the slack has been taken.
-func (q *Question) searchRated(dst span.Set, over span.Span, margin func(n *sky.Night, at time.Time) (m, rate float64)) span.Set {
+// from which the slack has been taken. It is known within there alone: a step
+// may be longer than what lies beyond, which would go unseen.
+func (q *Question) searchRated(dst span.Set, over, there span.Span, margin func(n *sky.Night, at time.Time) (m, rate float64)) span.Set {
 	dst = dst[:0]
-	at := over.From
-	for at.Before(over.Until) {
+	there = there.Intersect(over)
+	if there.Empty() {
+		return appendSpan(dst, over)
+	}
+	dst = appendSpan(dst, span.Span{From: over.From, Until: there.From})
+	at := there.From
+	for at.Before(there.Until) {
 		n := nightAt(q.Nights, at)
 		if n == nil {
-			next := over.Until
+			next := there.Until
 			for _, o := range q.Nights {
 				if from := BinOf(o).From; from.After(at) && from.Before(next) {
 					next = from
@@ -72,11 +78,23 @@ func (q *Question) searchRated(dst span.Set, over span.Span, margin func(n *sky.
 			at = next
 			continue
 		}
-		part := span.Span{From: at, Until: over.Until}.Intersect(BinOf(n))
+		part := span.Span{From: at, Until: there.Until}.Intersect(BinOf(n))
 		dst = span.AppendBelowRated(dst, func(t time.Time) (float64, float64) { return margin(n, t) }, part, q.Edge)
 		at = part.Until
 	}
-	return dst
+	return appendSpan(dst, span.Span{From: there.Until, Until: over.Until})
+}
+
+// reach returns the part of a span in which the aim says where it is: all but
+// for a table's ends. Both of its ends belong to it.
+func (a *Aim) reach(over span.Span) span.Span {
+	if a == nil || a.Frame != Table {
+		return over
+	}
+	if len(a.Points) < 2 {
+		return span.Span{}
+	}
+	return over.Intersect(span.Span{From: a.Points[0].At, Until: a.Points[len(a.Points)-1].At.Add(1)})
 }
 
 // appendSpan adds s, which does not begin before the set ends.

@@ -26,6 +26,13 @@ func (q *Question) holds(f *Foreseen, r *Region, over span.Span, dst, spare span
 	return span.AppendSubtract(dst, whole[:], used), used
 }
 
+// Within returns when, over the question's span, light about the aim might lie
+// in a region, and when all of it must.
+func (q *Question) Within(f *Foreseen, r *Region) (might, must span.Set) {
+	must, _ = q.holds(f, r, q.Over, nil, nil)
+	return q.touches(f, r, q.Over, nil), must
+}
+
 // within searches for when the signed margin of the region is used up. With
 // sign 1 the margin is positive where the aim is certainly outside; with sign
 // -1 it is positive where the aim is certainly inside. Both start from how far

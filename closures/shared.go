@@ -1,14 +1,15 @@
 package closures
 
+import "beamward/geometry/span"
+
 // Shared holds what many questions about one beam and one span have in common,
 // whatever the aim: it is worked out once for a plan of many targets. It is
 // immutable.
 type Shared struct {
-	foreseen *Foreseen
-	of       Question  // without an aim
-	days     []Finding // of daylight
-	least    Margin
-	ready    [][]passage // for each pointing
+	of    Question  // without an aim
+	days  []Finding // of daylight
+	least Margin
+	ready [][]passage // for each pointing
 }
 
 // plainRate is how fast against the sky an aim may move and still use shared
@@ -20,7 +21,7 @@ const plainRate = 1e-11
 func Share(f *Foreseen, q Question) *Shared {
 	star := Aim{Frame: ICRS, RateRA: plainRate}
 	q.Aim, q.Hits, q.Shared = &star, nil, nil
-	s := &Shared{foreseen: f, of: q, ready: make([][]passage, len(f.Pointings))}
+	s := &Shared{of: q, ready: make([][]passage, len(f.Pointings))}
 	var sh Sheet
 	daylight{}.Look(f, &q, &sh)
 	s.days, s.least = sh.Found, sh.Answers[CodeDaylight].Least
@@ -53,16 +54,21 @@ func (s *Shared) daylight(q *Question, sh *Sheet) bool {
 	return true
 }
 
-// passages returns the passages of a question's beam against a pointing, if
-// they were worked out and serve its aim. They serve any part of the span.
-func (s *Shared) passages(q *Question, p *Pointing) ([]passage, bool) {
+// Daylight returns when the Sun is above the beam's limit.
+func (s *Shared) Daylight() span.Set {
+	var set span.Set
+	for i := range s.days {
+		set = append(set, s.days[i].Over)
+	}
+	return span.Tidy(set)
+}
+
+// passages returns the passages of a question's beam against a pointing, by its
+// index, if they were worked out and serve its aim; else nil. They serve any
+// part of the span.
+func (s *Shared) passages(q *Question, pointing int) []passage {
 	if s == nil || s.of.Beam != q.Beam || q.Aim.Frame != ICRS || q.Aim.Error != 0 || !(q.Aim.ownRate() <= plainRate) {
-		return nil, false
+		return nil
 	}
-	for i := range s.ready {
-		if &s.foreseen.Pointings[i] == p && s.ready[i] != nil {
-			return s.ready[i], true
-		}
-	}
-	return nil, false
+	return s.ready[pointing]
 }
