@@ -18,6 +18,7 @@ type Planner struct {
 	near     span.Span // over, and as far beyond as a closure can reach in
 	nights   []*sky.Night
 	shared   *closures.Shared
+	dark     span.Set
 }
 
 // MaxLength is the longest span that one plan answers for.
@@ -48,8 +49,16 @@ func Prepare(f *closures.Foreseen, beam closures.BeamID, over span.Span, nights 
 	}
 	p := &Planner{foreseen: f, beam: b, over: over, near: near, nights: nights}
 	p.shared = closures.Share(f, p.question(nil))
+	p.dark = p.shared.Daylight().Widen(f.Rules.MarginTime(b)+clockError, clockError).Complement(over)
 	return p, nil
 }
+
+// Over returns the span that the plan is for.
+func (p *Planner) Over() span.Span { return p.over }
+
+// Dark returns when the Sun is below the beam's limit: all of the span for a
+// beam without one. An empty set says that the night has no dark time.
+func (p *Planner) Dark() span.Set { return slices.Clone(p.dark) }
 
 // Nights prepares every night that a plan over a span needs, in order.
 func Nights(r *closures.Rules, over span.Span) ([]*sky.Night, error) {
@@ -76,14 +85,6 @@ type Allowed struct {
 	LeftOut  closures.Codes // what only a decision can tell
 }
 
-// Share returns which part of the span is allowed.
-func (a *Allowed) Share(over span.Span) float64 {
-	if over.Length() == 0 {
-		return 0
-	}
-	return float64(a.Spans.Total()) / float64(over.Length())
-}
-
 // Scratch is one caller's memory, used again for each target.
 type Scratch struct {
 	sheet  closures.Sheet
@@ -99,14 +100,18 @@ func (p *Planner) question(a *closures.Aim) closures.Question {
 // One returns when the aim is allowed. An aim that is not valid is refused.
 // What is returned is the caller's own.
 func (p *Planner) One(a *closures.Aim, scratch *Scratch) (Allowed, error) {
-	if !a.Valid() {
-		return Allowed{}, closures.Errorf(closures.Invalid, "give a whole aim with finite numbers", "plan: the aim cannot be used")
+	a, ok := p.foreseen.Prepared(a, p.nights)
+	if !ok {
+		return Allowed{}, closures.Errorf(closures.Invalid, "give a whole aim with finite numbers, whose instant the plan's nights hold", "plan: the aim cannot be used")
 	}
 	q := p.question(a)
 	q.Hits, q.Shared = scratch.hits.Along(p.foreseen, &q), p.shared
 	sh := &scratch.sheet
 	sh.Reset()
 	p.foreseen.Look(&q, sh)
+	if len(p.dark) == 0 {
+		sh.Cautions = append(sh.Cautions, closures.Caution{Code: closures.CodeDaylight, Detail: "the Sun is at no time of the span below the beam's limit"})
+	}
 	clockError := p.foreseen.Rules.PlanClockError()
 	scratch.closed = p.foreseen.AppendClosed(scratch.closed, &q, sh, clockError)
 	return Allowed{

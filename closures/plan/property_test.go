@@ -123,7 +123,7 @@ func randomNight(t testing.TB, rng *rand.Rand, targets int) night {
 	for _, id := range []closures.TelescopeID{"ridge-2", "far-dome"} {
 		a := randomAim(rng, nights, n.over, middle)
 		if rng.IntN(2) == 0 {
-			a = &closures.Aim{Frame: closures.ICRS, Direction: near(rng, n.aims[0].InSkyAt(nights[0], from), 2*s1.Degree), Reference: from, Motion: closures.Tracking}
+			a = &closures.Aim{Frame: closures.ICRS, Direction: near(rng, toward(n.aims[0], nights[0], from), 2*s1.Degree), Reference: from, Motion: closures.Tracking}
 		}
 		if a.Frame == closures.Table {
 			a = &closures.Aim{Frame: closures.ICRS, Direction: a.Points[0].Direction, Reference: from, Motion: closures.Tracking}
@@ -154,14 +154,27 @@ func randomAim(rng *rand.Rand, nights []*sky.Night, over span.Span, middle time.
 	case 2:
 		a.Frame = closures.Table
 		v := star
-		for at := over.From.Add(-time.Hour); at.Before(over.Until.Add(time.Hour)); at = at.Add(40 * time.Minute) {
+		first, last := over.From.Add(-time.Hour), over.Until.Add(time.Hour)
+		if rng.IntN(2) == 0 { // it begins or ends within the night
+			first = middle.Add(-time.Duration(rng.IntN(7200)) * time.Second)
+			last = middle.Add(time.Hour + time.Duration(rng.IntN(7200))*time.Second)
+		}
+		for at := first; at.Before(last); at = at.Add(40 * time.Minute) {
 			v = near(rng, v, 0.2*s1.Degree)
 			a.Points = append(a.Points, closures.AimPoint{At: at, Direction: v})
 		}
 	case 3:
-		a.Frame, a.Direction, a.Motion = closures.Horizon, up, closures.Fixed
+		a.Frame, a.Direction, a.Motion, a.Refracted = closures.Horizon, up, closures.Fixed, rng.IntN(2) == 0
 	}
 	return a
+}
+
+// toward is an ICRS direction of the aim.
+func toward(a *closures.Aim, n *sky.Night, at time.Time) r3.Vector {
+	if a.Frame == closures.Table {
+		return a.Points[0].Direction
+	}
+	return a.InSkyAt(n, at)
 }
 
 func randomList(t testing.TB, rng *rand.Rand, n *night, i int) *closures.List {
@@ -182,7 +195,7 @@ func randomList(t testing.TB, rng *rand.Rand, n *night, i int) *closures.List {
 	nights, _ := plan.Nights(n.rules, text.Covers)
 	for k := range 20 {
 		a := n.aims[k%len(n.aims)]
-		region := closures.Region{ID: fmt.Sprint("r", k), Shape: closures.ICRSCone, Direction: near(rng, a.InSkyAt(nights[0], n.over.From), 0.5*s1.Degree), Radius: s1.Angle(0.1+rng.Float64()) * s1.Degree}
+		region := closures.Region{ID: fmt.Sprint("r", k), Shape: closures.ICRSCone, Direction: near(rng, toward(a, nights[0], n.over.From), 0.5*s1.Degree), Radius: s1.Angle(0.1+rng.Float64()) * s1.Degree}
 		switch rng.IntN(8) {
 		case 0:
 			region = closures.Region{ID: region.ID, Shape: closures.HorizonBox, Box: geometry.Box{AzFrom: s1.Angle(rng.Float64()) * 6, AzTo: s1.Angle(rng.Float64()) * 6, ElFrom: 0.5, ElTo: 0.8}, Observed: rng.IntN(2) == 0}
@@ -238,32 +251,25 @@ func TestPlanAgreesWithDecisions(t *testing.T) {
 			t.Fatal(err)
 		}
 		var scratch plan.Scratch
-		var sh closures.Sheet
-		var d closures.Decision
-		seq := uint64(1000)
+		decide := n.decider()
 		for _, a := range n.aims {
 			allowed, err := p.One(a, &scratch)
 			if err != nil {
 				t.Fatal(err)
 			}
-			seq++
-			n.state.Step([]closures.Fact{{Seq: seq, At: n.over.From, Body: closures.AimSeen{Beam: "north", Said: n.over.From.Add(time.Duration(seq)), From: "encoder", Aim: a}}}, n.over.From, nil)
-			closed := func(at time.Time) bool {
-				n.state.Decide("north", at, &sh, &d)
-				return d.Codes&closures.ForeseeableCodes() != 0 || !d.OpenUntil.IsZero() && !at.Before(d.OpenUntil)
-			}
+			decide.point(a)
 			check := func(at time.Time) {
 				if !n.over.Contains(at) {
 					return
 				}
 				asked++
 				in := allowed.Spans.Contains(at)
-				shut := closed(at)
+				shut := decide.closed(at)
 				if in {
 					open++
 				}
 				if in && shut {
-					t.Fatalf("%v: allowed, but decided %v; aim %+v", at, d.Codes.Names(), a)
+					t.Fatalf("%v: allowed, but decided %v; aim %+v", at, decide.decision.Codes.Names(), a)
 				}
 				if in || shut {
 					return
@@ -276,6 +282,10 @@ func TestPlanAgreesWithDecisions(t *testing.T) {
 						t.Fatalf("%v: blocked by %v of exact edges, but decided open", at, f.Code)
 					}
 				}
+			}
+			for _, o := range a.Points {
+				check(o.At.Add(-1))
+				check(o.At.Add(time.Second))
 			}
 			for _, s := range allowed.Spans {
 				for _, e := range []time.Time{s.From, s.Until} {
@@ -298,6 +308,39 @@ func TestPlanAgreesWithDecisions(t *testing.T) {
 	if float64(late) > 0.01*float64(asked) {
 		t.Error("the plan gives away more than a hundredth of the instants near its edges")
 	}
+}
+
+// decider asks the state of a night for decisions.
+type decider struct {
+	night    *night
+	seq      uint64
+	sheet    closures.Sheet
+	decision closures.Decision
+}
+
+func (n *night) decider() *decider { return &decider{night: n, seq: 1000} }
+
+// said is a newer instant than all before; the state's own clock stands still.
+func (d *decider) said() time.Time {
+	d.seq++
+	return d.night.over.From.Add(time.Duration(d.seq))
+}
+
+// hear gives the state a fact.
+func (d *decider) hear(body closures.Body) {
+	d.seq++
+	d.night.state.Step([]closures.Fact{{Seq: d.seq, At: d.night.over.From, Body: body}}, d.night.over.From, nil)
+}
+
+// point gives the beam an aim.
+func (d *decider) point(a *closures.Aim) {
+	d.hear(closures.AimSeen{Beam: "north", Said: d.said(), From: "encoder", Aim: a})
+}
+
+// closed reports whether something foreseeable closes the beam at an instant.
+func (d *decider) closed(at time.Time) bool {
+	d.night.state.Decide("north", at, &d.sheet, &d.decision)
+	return d.decision.Codes&closures.ForeseeableCodes() != 0 || !d.decision.OpenUntil.IsZero() && !at.Before(d.decision.OpenUntil)
 }
 
 func (n *night) fixedHold(f closures.Finding) bool {
