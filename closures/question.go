@@ -230,7 +230,15 @@ func (a *Aim) own(at time.Time) r3.Vector {
 	return v
 }
 
-func (a *Aim) drift() sky.Drift { return sky.Drift{RA: a.RateRA, Dec: a.RateDec, From: a.Reference} }
+// drift is the aim's steady motion. Right ascension runs from X toward Y, but
+// azimuth from Y (north) toward X (east): the other way round.
+func (a *Aim) drift() sky.Drift {
+	d := sky.Drift{RA: a.RateRA, Dec: a.RateDec, From: a.Reference}
+	if a.Frame == Horizon {
+		d.RA = -d.RA
+	}
+	return d
+}
 
 func (a *Aim) motion() sky.ProperMotion { return sky.ProperMotion{RA: a.PMRA, Dec: a.PMDec} }
 

@@ -48,6 +48,7 @@ func window(from, until time.Time) []closures.Window {
 
 // Each planted bug is an open decision beside something that closes, as if the
 // decision had overlooked it. The second opinion must say so, and why.
+// BW-033
 func TestCatchesPlantedBugs(t *testing.T) {
 	sec := func(n float64) time.Duration { return time.Duration(n * float64(time.Second)) }
 	cone := func(a *asked, radius float64) []closures.Region {
