@@ -55,7 +55,7 @@ func boot(ctx context.Context, dir string, c *clock.Virtual, cfg *config.Config,
 		return nil, err
 	}
 	if forgets {
-		durable = closures.Durable{}
+		durable.Holds, durable.Sightings = nil, nil
 	}
 	d.engine, err = engine.New(engine.Options{
 		Clock: c, Health: d.health, Reanchor: func() { c.Reanchor() }, Record: record{d.journal}, Rules: cfg.Rules,

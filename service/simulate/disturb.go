@@ -52,7 +52,7 @@ func (n *night) disturbs() {
 // misset sets the machine's clock wrong for a time, as the kernel then says.
 func (n *night) misset() {
 	from := n.some()
-	by := n.lasting(200*time.Millisecond, 20*time.Second)
+	by := n.lasting(200*time.Millisecond, 5*time.Minute)
 	if n.rng.IntN(2) == 0 {
 		by = -by
 	}
@@ -79,7 +79,7 @@ func (n *night) ends() {
 		case 0:
 			n.then(when, func() {
 				n.stall = n.now().Add(down)
-				n.busy = n.stall.Add(2 * time.Second)
+				n.busy = n.stall.Add(soon)
 			})
 		case 1:
 			n.then(when, func() { n.sleep(down) })
@@ -123,5 +123,5 @@ func (n *night) kept() {
 func (n *night) sleep(d time.Duration) {
 	n.clock.Suspend(d)
 	n.advance(0)
-	n.busy = n.now().Add(2 * time.Second)
+	n.busy = n.now().Add(soon)
 }

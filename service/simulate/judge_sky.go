@@ -77,6 +77,9 @@ func crosses(up, axis r3.Vector, p *beamPaper) bool {
 			v := x.Sub(p.telescopeAt)
 			r := v.Norm()
 			wide := (p.aperture + mirrorM) / 2
+			if r > 4*wide && v.Dot(axis) < 0.9*r {
+				continue // more than 25° apart, which no width makes up for
+			}
 			if r <= wide || angle(v.Mul(1/r), axis)-math.Asin(wide/r) < fieldDeg*degree {
 				return true
 			}

@@ -80,12 +80,13 @@ type night struct {
 	targets map[string]r3.Vector
 	lists   map[closures.ListID]*closures.List
 
-	events []event
-	busy   time.Time // something happens until then: look closely
-	judge  *judge
-	result Result
-	view   *engine.View
-	rearms map[closures.BeamID]time.Time
+	events  []event
+	busy    time.Time // something happens until then: look closely
+	flushed time.Time
+	judge   *judge
+	result  Result
+	view    *engine.View
+	rearms  map[closures.BeamID]time.Time
 }
 
 // Night plays a night. The error is of the playing; what was unsafe is in the
@@ -178,8 +179,11 @@ func (n *night) play(ctx context.Context) error {
 }
 
 const (
-	closely = 100 * time.Millisecond
-	quietly = time.Second
+	closely    = 100 * time.Millisecond
+	quietly    = time.Second
+	soon       = 1100 * time.Millisecond // what comes within is looked at closely
+	settles    = 2500 * time.Millisecond // after a change, until the shutter has said where it is
+	writeEvery = 500 * time.Millisecond  // a kill loses what is younger and nobody waits for
 )
 
 // pace is how far the next step is: to the next whole second while nothing
@@ -187,13 +191,13 @@ const (
 func (n *night) pace() time.Duration {
 	now := n.now()
 	rest := quietly - time.Duration(now.UnixNano())%quietly
-	if now.Before(n.busy) || len(n.events) > 0 && n.events[0].at.Sub(now) < 1500*time.Millisecond {
+	if now.Before(n.busy) || len(n.events) > 0 && n.events[0].at.Sub(now) < soon {
 		return closely - time.Duration(now.UnixNano())%closely
 	}
 	if n.view != nil {
 		for i := range n.view.Beams {
 			d := n.view.Beams[i].Decision
-			if left := d.OpenUntil.Sub(now); d.Open && !d.OpenUntil.IsZero() && left < 1500*time.Millisecond {
+			if left := d.OpenUntil.Sub(now); d.Open && !d.OpenUntil.IsZero() && left < soon {
 				return closely - time.Duration(now.UnixNano())%closely
 			}
 		}
@@ -212,7 +216,7 @@ func (n *night) advance(d time.Duration) {
 		if end := l.endsAt(); end.Before(now) {
 			n.judge.light(l.beam, end.Add(-1), l.validUntil)
 			l.lit, l.closing = false, time.Time{}
-			n.busy = now.Add(2 * time.Second)
+			n.busy = now.Add(settles)
 			n.next["laser "+string(l.beam)] = time.Time{}
 		}
 	}
@@ -241,8 +245,11 @@ func (n *night) step(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	if err := n.daemon.journal.Flush(ctx); err != nil {
-		return err
+	if now.Sub(n.flushed) >= writeEvery {
+		n.flushed = now
+		if err := n.daemon.journal.Flush(ctx); err != nil {
+			return err
+		}
 	}
 	n.note(v)
 	if err := n.reads(now); err != nil {
@@ -257,7 +264,7 @@ func (n *night) note(v *engine.View) {
 	if n.view != nil {
 		for i := range v.Beams {
 			if o := n.view.Beam(v.Beams[i].Decision.Beam); o != nil && o.Decision.Open != v.Beams[i].Decision.Open {
-				n.busy = n.now().Add(2 * time.Second)
+				n.busy = n.now().Add(settles)
 			}
 		}
 	}
@@ -270,7 +277,7 @@ func (n *night) reads(now time.Time) error {
 		if now.Before(n.next["read "+string(l.beam)]) {
 			continue
 		}
-		n.next["read "+string(l.beam)] = now.Add(time.Second)
+		n.next["read "+string(l.beam)] = now.Truncate(time.Second).Add(time.Second) // never later than the site's renew
 		open, err := l.read(n.daemon.issuer, now)
 		if err != nil {
 			return err

@@ -137,7 +137,7 @@ func (n *night) orders() {
 		case 1:
 			h.Until = when.Add(n.lasting(5*time.Second, 2*time.Minute))
 		default:
-			n.at(when.Add(n.lasting(5*time.Second, 90*time.Second)), n.releases(h.ID))
+			n.at(when.Add(n.lasting(5*time.Second, 4*time.Minute)), n.releases(h.ID))
 		}
 		n.at(when, n.holds(h))
 	}

@@ -33,7 +33,7 @@ func (n *night) happen(ctx context.Context) error {
 	for len(n.events) > 0 && !n.events[0].at.After(n.now()) {
 		e := n.events[0]
 		n.events = n.events[1:]
-		n.busy = n.now().Add(2 * time.Second)
+		n.busy = n.now().Add(soon)
 		again, err := e.do(ctx)
 		if err != nil {
 			return err
