@@ -116,15 +116,25 @@ func datedFiles(ts *testscript.TestScript, _ bool, args []string) {
 	}
 }
 
-// spoil FILE changes one byte within the first compressed block of a record.
+// spoil FILE changes one byte within every compressed block of a record, some of
+// which may lie in pages that are no longer used.
 func spoilFile(ts *testscript.TestScript, _ bool, args []string) {
 	path := ts.MkAbs(args[0])
 	data, err := os.ReadFile(path)
 	ts.Check(err)
-	at := bytes.Index(data, []byte{0x28, 0xb5, 0x2f, 0xfd}) // Zstandard's magic number, RFC 8878
-	if at < 0 {
+	magic := []byte{0x28, 0xb5, 0x2f, 0xfd} // Zstandard's, RFC 8878
+	n := 0
+	for at := bytes.Index(data, magic); at >= 0; n++ {
+		data[at+24] ^= 1
+		next := bytes.Index(data[at+1:], magic)
+		if next < 0 {
+			at = next
+		} else {
+			at += 1 + next
+		}
+	}
+	if n == 0 {
 		ts.Fatalf("%s holds no block", path)
 	}
-	data[at+24] ^= 1
 	ts.Check(os.WriteFile(path, data, 0o600))
 }

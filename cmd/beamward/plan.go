@@ -25,8 +25,10 @@ func planCommand(out *console) *cobra.Command {
 		Short: "Say when each target is allowed, and what stands against it",
 		Long: `Reads a table of targets (- is stdin) and says for each when the beam may point
 there, under everything that can be foreseen, by the same checks that decide each
-second. The table is CSV, name,ra_deg,dec_deg[,pm_ra_mas_yr,pm_dec_mas_yr,
-length_s,priority], or JSON with the same names.
+second. The table is CSV under a header row, or a JSON array with the same names:
+name and ra_deg,dec_deg (with pm_ra_mas_yr,pm_dec_mas_yr, or rate_ra_arcsec_s,
+rate_dec_arcsec_s,rate_at), or az_deg,el_deg,refracted, or an ephemeris of rows
+with point_at; and length_s, priority, min_span_s, reacquire_s.
 
 With --config it plans offline, on the lists in the authorities' folders and in
 --lists, as if each were confirmed; holds are then not known. With --server a

@@ -60,9 +60,9 @@ func planOffline(ctx context.Context, out *console, from *configFlag, ask *planA
 	w := planWriterFor(out, ask.format, cfg.Rules.Site.Name)
 	w.begin(&head)
 	shown := out.watch("targets planned")
-	err = eachTarget(ctx, p, targets, func(i int, a *plan.Allowed) error {
+	err = eachTarget(ctx, p, targets, func(i int, a *plan.Planned) error {
 		shown.at(i+1, len(targets))
-		t := targetOf(beam.ID, &targets[i], a)
+		t := targetOf(beam.ID, a)
 		w.target(&t)
 		return out.broken
 	})
@@ -75,10 +75,10 @@ const batch = 256
 
 // eachTarget plans on as many processors as there are, and gives the results in
 // the order of the table.
-func eachTarget(ctx context.Context, p *plan.Planner, targets []plan.Target, take func(int, *plan.Allowed) error) error {
+func eachTarget(ctx context.Context, p *plan.Planner, targets []plan.Target, take func(int, *plan.Planned) error) error {
 	workers := runtime.GOMAXPROCS(0)
 	scratch := make([]plan.Scratch, workers)
-	var results [batch]plan.Allowed
+	var results [batch]plan.Planned
 	var errs [batch]error
 	for from := 0; from < len(targets); from += batch {
 		part := targets[from:min(from+batch, len(targets))]
@@ -86,7 +86,7 @@ func eachTarget(ctx context.Context, p *plan.Planner, targets []plan.Target, tak
 		for w := range workers {
 			all.Go(func() {
 				for i := w; i < len(part); i += workers {
-					results[i], errs[i] = p.One(part[i].Aim, &scratch[w])
+					results[i], errs[i] = p.Target(&part[i], &scratch[w])
 				}
 			})
 		}
@@ -107,10 +107,10 @@ func eachTarget(ctx context.Context, p *plan.Planner, targets []plan.Target, tak
 }
 
 // targetOf puts a result into the shape in which the service gives it.
-func targetOf(beam closures.BeamID, t *plan.Target, a *plan.Allowed) client.Target {
-	out := client.Target{Name: t.Name, Allowed: []client.Span{}, AllowedS: a.Spans.Total().Seconds(), Blocked: []client.Closure{}, Cautions: []wire.Caution{}}
-	for _, s := range a.Spans {
-		out.Allowed = append(out.Allowed, client.Span{From: s.From.UTC(), Until: s.Until.UTC()})
+func targetOf(beam closures.BeamID, a *plan.Planned) client.Target {
+	out := client.Target{
+		Name: a.Target.Name, Allowed: spansOf(a.Spans), AllowedS: a.Spans.Total().Seconds(), Usable: spansOf(a.Usable),
+		Blocked: []client.Closure{}, Cautions: []wire.Caution{},
 	}
 	for i := range a.Blocked {
 		f := &a.Blocked[i]
@@ -121,6 +121,14 @@ func targetOf(beam closures.BeamID, t *plan.Target, a *plan.Allowed) client.Targ
 	}
 	for i := range a.Cautions {
 		out.Cautions = append(out.Cautions, wire.CautionOf(&a.Cautions[i]))
+	}
+	return out
+}
+
+func spansOf(set span.Set) []client.Span {
+	out := []client.Span{}
+	for _, s := range set {
+		out = append(out, client.Span{From: s.From.UTC(), Until: s.Until.UTC()})
 	}
 	return out
 }

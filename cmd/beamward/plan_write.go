@@ -59,7 +59,7 @@ func (w *planTable) target(t *client.Target) {
 		}
 		state, why := "closed", strings.Join(nonEmpty(it.Code, it.Source, it.List, it.Region, it.Ref), " ")
 		if it.Open {
-			state, why = "open", ""
+			state, why = "open", tooShort(t, &it)
 		}
 		w.rows = append(w.rows, []string{printable(t.Name), state, clockTime(from), clockTime(until), until.Sub(from).String(), printable(why)})
 	}
@@ -85,6 +85,16 @@ func (w *planTable) end() error {
 	}
 	w.out.printf("Left out, since no plan can foresee it: %s\n", strings.Join(w.left, ", "))
 	return nil
+}
+
+// tooShort says so where nothing of an allowed span serves the target.
+func tooShort(t *client.Target, it *render.Item) string {
+	for _, s := range t.Usable {
+		if s.From.Before(it.Span.Until) && it.Span.From.Before(s.Until) {
+			return ""
+		}
+	}
+	return "too short for the target"
 }
 
 // wholeSeconds rounds a span: a closure outward, an allowed one inward.
