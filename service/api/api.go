@@ -28,12 +28,13 @@ type API struct {
 	document huma.API
 	openapi  []byte
 
-	clients  clients
-	answers  answers
-	heavy    chan struct{}
-	intakes  intakes
-	summings summings
-	hub      hub
+	clients    clients
+	listChange chan struct{} // held by who confirms or withdraws a list
+	answers    answers
+	heavy      chan struct{}
+	intakes    intakes
+	summings   summings
+	hub        hub
 }
 
 // New makes an API. It fails for options that are missing.
@@ -45,6 +46,7 @@ func New(o Options) (*API, error) {
 		o.Report = func(error) {}
 	}
 	a := &API{options: o, limits: o.Limits.filled()}
+	a.listChange = make(chan struct{}, 1)
 	a.heavy = make(chan struct{}, a.limits.Heavy)
 	a.clients.limits = &a.limits
 	a.answers.keep = a.limits.Remember

@@ -18,7 +18,8 @@ type checkDoc struct {
 	Beams     []closures.BeamID    `json:"beams" doc:"none: every beam"`
 	Windows   int                  `json:"window_count"`
 	Digest    string               `json:"digest"`
-	Format    string               `json:"format" enum:"yaml,json,csv"`
+	Format    string               `json:"format" enum:"yaml,json,csv,text"`
+	Layout    string               `json:"layout" doc:"of a text: the layout that read it"`
 	Lines     int                  `json:"lines"`
 	Class     string               `json:"class" enum:"same,tightening,loosening" doc:"same: it is known already; tightening only if that is proven"`
 	Would     string               `json:"would" enum:"nothing,take-effect,wait-for-confirmation,wait-for-second-person" doc:"what bringing it would do; its closed windows take effect at once in any case"`
@@ -65,7 +66,7 @@ func (c *call) checkList() error {
 	sum := listfile.Summarise(t)
 	out := checkDoc{
 		Authority: t.Authority, ID: t.ID, Issued: t.Issued.UTC(), Covers: spanDoc{t.Covers.From.UTC(), t.Covers.Until.UTC()}, Beams: slices.Clone(t.Beams),
-		Windows: len(t.Windows), Digest: t.Digest.String(), Format: report.Format.String(), Lines: report.Lines, Class: class, Would: would,
+		Windows: len(t.Windows), Digest: t.Digest.String(), Format: report.Format.String(), Layout: report.Layout, Lines: report.Lines, Class: class, Would: would,
 		Change: changeOf(v, l), Understood: understoodOf(&sum),
 	}
 	if out.Beams == nil {

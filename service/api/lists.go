@@ -4,8 +4,10 @@ import (
 	"bytes"
 	"encoding/json"
 	"errors"
+	"io"
 	"net/http"
-	"slices"
+	"strconv"
+	"strings"
 
 	"beamward/closures"
 	"beamward/closures/listfile"
@@ -22,6 +24,7 @@ var listTypes = map[string]listfile.Format{
 func listRoutes() []route {
 	takes := []string{"application/yaml", jsonType, "text/csv", "text/plain", "application/octet-stream", "application/x-yaml", "text/yaml"}
 	format := param{"format", "how the text is written; auto tells from the text. It goes before Content-Type", wordOf("auto", "yaml", "json", "csv")}
+	layout := param{"layout", "the layout of the site's config that reads the text, instead of a format", textOf(64)}
 	ofPath := "/v1/lists/{authority}/{id}"
 	return []route{
 		{method: "GET", path: "/v1/lists", id: "lists", summary: "The closure lists that are known", action: access.See,
@@ -30,9 +33,9 @@ func listRoutes() []route {
 				limitParam, cursorParam,
 			}, answer: listsDoc{}, serve: (*call).lists},
 		{method: "POST", path: "/v1/lists", id: "addList", summary: "Bring a closure list; one bad line refuses it whole", action: access.Act, budget: forWriting,
-			query: []param{format}, headers: []param{keyParam}, takes: takes, status: http.StatusCreated, answer: listDoc{}, errors: []int{404, 409}, serve: (*call).addList},
+			query: []param{format, layout}, headers: []param{keyParam}, takes: takes, status: http.StatusCreated, answer: listDoc{}, errors: []int{404, 409}, serve: (*call).addList},
 		{method: "POST", path: "/v1/lists/check", id: "checkList", summary: "Say how a closure list would be understood and what it would change; keeps nothing", action: access.See, budget: forWriting,
-			query: []param{format}, takes: takes, answer: checkDoc{}, errors: []int{404, 409}, serve: (*call).checkList},
+			query: []param{format, layout}, takes: takes, answer: checkDoc{}, errors: []int{404, 409}, serve: (*call).checkList},
 		{method: "GET", path: ofPath, id: "list", summary: "One closure list as it was understood; as YAML or CSV: the list itself", action: access.See,
 			gives: []string{jsonType, "application/yaml", "text/csv"}, answer: listDoc{}, serve: (*call).list},
 		{method: "POST", path: ofPath + "/confirm", id: "confirmList", summary: "Let a waiting list, or a withdrawal, take effect; by digest or If-Match", action: access.Act, budget: forWriting,
@@ -44,21 +47,17 @@ func listRoutes() []route {
 
 // readList reads the list in the body, in one of the few slots.
 func (c *call) readList() (*closures.List, listfile.Report, error) {
+	load, err := c.listReader()
+	if err != nil {
+		return nil, listfile.Report{}, err
+	}
 	give, err := c.slot()
 	if err != nil {
 		return nil, listfile.Report{}, err
 	}
 	defer give()
-	format := listTypes[c.takes()]
-	if c.has("format") {
-		word, err := c.word("format", "auto", "yaml", "json", "csv")
-		if err != nil {
-			return nil, listfile.Report{}, err
-		}
-		format, _ = listfile.ParseFormat(word)
-	}
 	body := c.body(c.api.limits.List, c.api.limits.LongTime)
-	l, report, err := listfile.Load(body, format, listfile.Limits{Bytes: c.api.limits.List})
+	l, report, err := load(body, listfile.Limits{Bytes: c.api.limits.List})
 	if body.err != nil {
 		return nil, report, body.err
 	}
@@ -67,6 +66,32 @@ func (c *call) readList() (*closures.List, listfile.Report, error) {
 		return nil, report, listRefused(bad)
 	}
 	return l, report, err
+}
+
+// listReader says how the text is read: by a layout, by format=, or as
+// Content-Type has it.
+func (c *call) listReader() (func(io.Reader, listfile.Limits) (*closures.List, listfile.Report, error), error) {
+	if c.has("layout") {
+		l := c.api.options.Layouts[c.query.Get("layout")]
+		switch {
+		case l == nil:
+			return nil, badQuery("layout", "no layout of this name is configured", "name one of the config's layouts")
+		case c.has("format"):
+			return nil, badQuery("format", "a text has a format or a layout", "give one of them")
+		}
+		return l.Load, nil
+	}
+	format := listTypes[c.takes()]
+	if c.has("format") {
+		word, err := c.word("format", "auto", "yaml", "json", "csv")
+		if err != nil {
+			return nil, err
+		}
+		format, _ = listfile.ParseFormat(word)
+	}
+	return func(r io.Reader, limits listfile.Limits) (*closures.List, listfile.Report, error) {
+		return listfile.Load(r, format, limits)
+	}, nil
 }
 
 // listRefused tells every bad line that the reader kept.
@@ -161,47 +186,82 @@ func (c *call) list() error {
 }
 
 type confirmBody struct {
-	Digest string `json:"digest,omitempty" doc:"of the list that was looked at; If-Match does as well"`
+	Digest     string `json:"digest,omitempty" doc:"of the list that was looked at; If-Match does as well"`
+	Withdrawal bool   `json:"withdrawal,omitempty" doc:"what is confirmed is that the list is withdrawn, which somebody asked for"`
 }
 
 func (c *call) confirmList() error {
-	v, _ := c.view()
-	e, err := c.theList(v)
-	if err != nil {
-		return err
-	}
-	matched, err := c.ifMatch(listTag(e))
-	if err != nil {
-		return err
-	}
 	var in confirmBody
 	if err := c.read(&in); err != nil {
 		return err
 	}
-	digest := e.List.Digest()
-	switch {
-	case in.Digest != "":
-		if digest, err = closures.ParseDigest(in.Digest); err != nil {
-			return wrong("/digest", "it is no digest", "give sha256: and 64 lower-case hexadecimal digits, as the list's document has it")
+	return c.once(c.asked("confirm", in.Digest, strconv.FormatBool(in.Withdrawal)), false, func() (int, http.Header, []byte, error) {
+		end, err := c.changing()
+		if err != nil {
+			return 0, nil, nil, err
 		}
-	case !matched:
-		return refuse(http.StatusBadRequest, "it is not said which list was looked at", "give its digest, or its ETag in If-Match")
-	}
-	first := e.By
-	if e.Asked != "" {
-		first = e.Asked
-	}
-	if v.loosening(e) == closures.LooseningSecondPerson {
-		if err := c.second(first); err != nil {
-			return err
+		defer end()
+		e, digest, err := c.toConfirm(&in)
+		if err == nil {
+			err = c.submit(closures.ListConfirmed{Authority: e.List.Authority(), ID: e.List.ID(), Digest: digest, By: c.who.Name})
 		}
-	}
-	return c.once(slices.Concat([]byte("confirm"), digest[:]), false, func() (int, http.Header, []byte, error) {
-		if err := c.submit(closures.ListConfirmed{Authority: e.List.Authority(), ID: e.List.ID(), Digest: digest, By: c.who.Name}); err != nil {
+		if err != nil {
 			return 0, nil, nil, err
 		}
 		return c.listAnswer(http.StatusOK, e.List.Authority(), e.List.ID())
 	})
+}
+
+// asked is what a request to change a list asks for, precondition included.
+func (c *call) asked(parts ...string) []byte {
+	return []byte(strings.Join(append(parts, c.r.Header.Values("If-Match")...), "\x00"))
+}
+
+// changing waits until nobody else confirms or withdraws a list, so that what
+// was looked at is what is changed; end lets the next one.
+func (c *call) changing() (end func(), err error) {
+	c.longer(2*c.api.limits.Durable + c.api.limits.Answer)
+	select {
+	case c.api.listChange <- struct{}{}:
+		return func() { <-c.api.listChange }, nil
+	case <-c.r.Context().Done():
+		return nil, c.r.Context().Err()
+	}
+}
+
+// toConfirm returns the list that a person confirms, and the digest of what
+// they have looked at. The core confirms whatever waits: the list, or its
+// withdrawal. Which of them a person means is therefore asked here.
+func (c *call) toConfirm(in *confirmBody) (e *closures.Entry, digest closures.Digest, err error) {
+	v, _ := c.view()
+	if e, err = c.theList(v); err != nil {
+		return nil, digest, err
+	}
+	matched, err := c.ifMatch(listTag(e))
+	if err != nil {
+		return nil, digest, err
+	}
+	digest = e.List.Digest()
+	switch {
+	case in.Digest != "":
+		if digest, err = closures.ParseDigest(in.Digest); err != nil {
+			return nil, digest, wrong("/digest", "it is no digest", "give sha256: and 64 lower-case hexadecimal digits, as the list's document has it")
+		}
+	case !matched:
+		return nil, digest, refuse(http.StatusBadRequest, "it is not said which list was looked at", "give its digest, or its ETag in If-Match")
+	}
+	leaving := e.Asked != "" && e.Status != closures.ListGone
+	switch {
+	case in.Withdrawal && !leaving:
+		return nil, digest, refuse(http.StatusConflict, "no withdrawal of the list waits for confirmation", "look at the list again")
+	case leaving && !in.Withdrawal && !matched:
+		return nil, digest, refuse(http.StatusConflict, "somebody asked to withdraw the list, and a confirmation would do that", "look at the list again; to have it withdrawn, confirm with withdrawal: true")
+	case v.loosening(e) != closures.LooseningSecondPerson:
+		return e, digest, nil
+	case leaving:
+		return e, digest, c.second(e.Asked)
+	}
+	return e, digest, c.second(e.By)
 }
 
 // loosening is what the list's authority asks of what loosens; the most where
@@ -218,14 +278,6 @@ type withdrawBody struct {
 }
 
 func (c *call) withdrawList() error {
-	v, _ := c.view()
-	e, err := c.theList(v)
-	if err != nil {
-		return err
-	}
-	if _, err := c.ifMatch(listTag(e)); err != nil {
-		return err
-	}
 	var in withdrawBody
 	if err := c.read(&in); err != nil {
 		return err
@@ -233,11 +285,24 @@ func (c *call) withdrawList() error {
 	if err := checkText("/reference", in.Reference, 0, 200); err != nil {
 		return err
 	}
-	if v.loosening(e) == closures.LooseningSecondPerson && !c.who.Token {
-		return c.second("")
-	}
-	return c.once([]byte("withdraw "+in.Reference), false, func() (int, http.Header, []byte, error) {
-		if err := c.submit(closures.ListWithdrawn{Authority: e.List.Authority(), ID: e.List.ID(), By: c.who.Name, Reference: in.Reference}); err != nil {
+	return c.once(c.asked("withdraw", in.Reference), false, func() (int, http.Header, []byte, error) {
+		end, err := c.changing()
+		if err != nil {
+			return 0, nil, nil, err
+		}
+		defer end()
+		v, _ := c.view()
+		e, err := c.theList(v)
+		if err == nil {
+			_, err = c.ifMatch(listTag(e))
+		}
+		if err == nil && v.loosening(e) == closures.LooseningSecondPerson && !c.who.Token {
+			err = c.second("")
+		}
+		if err == nil {
+			err = c.submit(closures.ListWithdrawn{Authority: e.List.Authority(), ID: e.List.ID(), By: c.who.Name, Reference: in.Reference})
+		}
+		if err != nil {
 			return 0, nil, nil, err
 		}
 		return c.listAnswer(http.StatusOK, e.List.Authority(), e.List.ID())

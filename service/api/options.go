@@ -7,6 +7,7 @@ import (
 	"time"
 
 	"beamward/closures"
+	"beamward/closures/listfile"
 	"beamward/geometry/sky"
 	"beamward/geometry/span"
 	"beamward/service/access"
@@ -73,6 +74,9 @@ type Options struct {
 	Guard   *access.Guard
 	Permits Permits // nil: the permit routes answer 503
 	Record  Record  // nil: the record's route answers 503
+
+	// Layouts read lists that are not in a native format, by name.
+	Layouts map[string]*listfile.Layout
 
 	// Nights prepares the sky over a span, for plans; nil: plan.Nights.
 	Nights  func(r *closures.Rules, over span.Span) ([]*sky.Night, error)

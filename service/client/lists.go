@@ -6,6 +6,7 @@ import (
 	"net/http"
 	"net/url"
 	"strconv"
+	"strings"
 	"time"
 
 	"beamward/closures"
@@ -84,6 +85,7 @@ type Check struct {
 	Windows   int                  `json:"window_count"`
 	Digest    string               `json:"digest"`
 	Format    string               `json:"format"`
+	Layout    string               `json:"layout"`
 	Lines     int                  `json:"lines"`
 	Class     string               `json:"class"` // same, tightening, loosening
 	Would     string               `json:"would"`
@@ -139,12 +141,18 @@ func (c *Client) ListText(ctx context.Context, authority closures.AuthorityID, i
 
 var mediaTypes = map[string]string{"yaml": "application/yaml", "json": "application/json", "csv": "text/csv"}
 
-// listRequest is a post of a list's text. format is yaml, json, csv, or empty
-// where the text itself tells.
+// LayoutPrefix stands before the name of a layout of the service's config,
+// where a format is asked for.
+const LayoutPrefix = "layout:"
+
+// listRequest is a post of a list's text. format is yaml, json, csv, a layout
+// after LayoutPrefix, or empty where the text itself tells.
 func listRequest(text io.Reader, format, key string, path ...string) request {
 	r := request{method: http.MethodPost, path: path, body: text, header: http.Header{"Content-Type": {"application/octet-stream"}}}
 	if m := mediaTypes[format]; m != "" {
 		r.header.Set("Content-Type", m)
+	} else if layout, is := strings.CutPrefix(format, LayoutPrefix); is {
+		r.query = url.Values{"layout": {layout}}
 	} else if format != "" {
 		r.query = url.Values{"format": {format}}
 	}
@@ -154,8 +162,9 @@ func listRequest(text io.Reader, format, key string, path ...string) request {
 	return r
 }
 
-// AddList brings a closure list. The text is read once, as it is sent. An
-// empty key is left out.
+// AddList brings a closure list. The text is read once, as it is sent. format
+// is yaml, json, csv, a layout after LayoutPrefix, or empty where the text
+// itself tells. An empty key is left out.
 func (c *Client) AddList(ctx context.Context, text io.Reader, format, key string) (out List, err error) {
 	_, err = c.ask(ctx, listRequest(text, format, key, "v1", "lists"), &out)
 	return out, err
@@ -168,12 +177,23 @@ func (c *Client) CheckList(ctx context.Context, text io.Reader, format string) (
 	return out, err
 }
 
-// ConfirmList lets a waiting list, or a withdrawal, take effect. digest is that
-// of the list as it was looked at.
+// ConfirmList lets a waiting list take effect. digest is that of the list as it
+// was looked at.
 func (c *Client) ConfirmList(ctx context.Context, authority closures.AuthorityID, id closures.ListID, digest string) (out List, err error) {
+	return c.confirm(ctx, authority, id, digest, false)
+}
+
+// ConfirmWithdrawal lets a list's withdrawal, which somebody asked for, take
+// effect.
+func (c *Client) ConfirmWithdrawal(ctx context.Context, authority closures.AuthorityID, id closures.ListID, digest string) (out List, err error) {
+	return c.confirm(ctx, authority, id, digest, true)
+}
+
+func (c *Client) confirm(ctx context.Context, authority closures.AuthorityID, id closures.ListID, digest string, withdrawal bool) (out List, err error) {
 	body := struct {
-		Digest string `json:"digest"`
-	}{digest}
+		Digest     string `json:"digest"`
+		Withdrawal bool   `json:"withdrawal,omitempty"`
+	}{digest, withdrawal}
 	err = c.send(ctx, body, &out, "", "", "v1", "lists", string(authority), string(id), "confirm")
 	return out, err
 }

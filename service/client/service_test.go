@@ -336,6 +336,9 @@ func TestAgainstARunningService(t *testing.T) {
 	if err != nil || withdrawn.Withdrawal != "ann" || withdrawn.Status != "in-force" {
 		t.Errorf("withdrawn %+v %v", withdrawn, err)
 	}
+	if _, err := ben.ConfirmList(ctx, "orbital-desk", "l-1", added.Digest); !errors.As(err, &p) || p.Status != 409 {
+		t.Errorf("a withdrawal was confirmed by who meant the list: %v", err)
+	}
 
 	for deadline := time.Now().Add(10 * time.Second); ; time.Sleep(10 * time.Millisecond) {
 		mu.Lock()
