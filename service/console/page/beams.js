@@ -1,7 +1,7 @@
 // Each beam: its state as a word and a shape, until when, and why.
 
 import { h, svg, put, show, rows, byID } from "./dom.js";
-import { plain, rank, hms, span, age, lasting, margin } from "./words.js";
+import { plain, within, after, rank, hms, span, age, lasting, margin } from "./words.js";
 
 // Three shapes that differ without colour: a ring with the beam through it, a
 // block, a broken diamond.
@@ -83,13 +83,13 @@ function card(beam, rearm) {
       if (Number.isFinite(until)) {
         put(count, span((until - now) / 1000));
         const first = state === "open" ? b.coming[0] : null;
-        put(when, state === "open" ? `to ${hms(until)}, then shuttered${first ? `: ${plain(first.code).toLowerCase()}` : ""}` : `to ${hms(until)}, when it may open`);
+        put(when, state === "open" ? `to ${hms(until)}, then shuttered${first ? `: ${within(first.code)}` : ""}` : `to ${hms(until)}, when it may open`);
       } else {
         put(count, b.opening ? "Opening" : "–:––");
         put(when, state === "open" ? "no closure in sight" : b.opening ? "once that is on record" : "when it may open cannot be told");
       }
       show(wait, b.rearm.length > 0);
-      put(wait, `Re-arm ${beam} (after ${b.rearm.map((c) => plain(c).toLowerCase()).join("; ")})`);
+      put(wait, `Re-arm ${beam}, ${after(b.rearm)}`);
       rows(why, b.reasons.map((r) => ({ r, now })), ({ r }) => `${r.code}\0${r.source}\0${r.ref}`, reasonRow);
       show(why, b.reasons.length > 0);
       rows(cautions, b.cautions, (c) => `${c.code}\0${c.source}`, () => {
@@ -108,10 +108,27 @@ function card(beam, rearm) {
 export class Beams {
   #spoken = new Map();
 
+  // strip says each beam's state once more, where it stays in sight while the
+  // page is scrolled.
+  #strip(view, now, lost) {
+    rows(byID("strip-beams"), view?.beams ?? [], (b) => b.beam, (first) => {
+      const shape = svg("svg", { viewBox: "0 0 24 24", class: "shape" }), word = h("b"), count = h("span");
+      const el = h("li", null, shape, h("span", null, first.beam), word, count);
+      return { el, update: (b) => {
+        const state = !lost && (b.state === "open" || b.state === "shuttered") ? b.state : "unknown";
+        if (el.dataset.state !== state) { el.dataset.state = state; shape.replaceChildren(...shapes[state]()); }
+        put(word, words[state]);
+        const until = Date.parse(b.open_until ?? "");
+        put(count, state === "open" && Number.isFinite(until) ? span((until - now) / 1000) : "");
+      } };
+    });
+  }
+
   constructor(rearm) { this.rearm = rearm; }
 
   draw(view, now, lost) {
     rows(byID("beams"), (view?.beams ?? []).map((b) => ({ b, now, lost })), ({ b }) => b.beam, ({ b }) => card(b.beam, this.rearm));
+    this.#strip(view, now, lost);
     const heads = [];
     for (const b of view?.beams ?? []) {
       const state = lost ? "not known" : b.state;

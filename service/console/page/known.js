@@ -1,7 +1,8 @@
 // What the page knows, and for how long it may say so.
 
-// limit is the age in ms past which nothing is claimed any more.
-export const limit = 2000;
+// limit is the age in ms past which nothing is claimed any more. The promise is
+// two seconds; the rest is left for noticing and drawing.
+export const limit = 1800;
 
 const lagsKept = 60_000;
 

@@ -34,13 +34,13 @@ function draw() {
     wasLost = lost;
     sky.draw();
   }
+  work.draw(view, lost);
   if (lost) return;
-  work.draw(view);
   drawSources(view, now);
 }
 
-// The curtain of the style sheet comes down two seconds after the newest view,
-// whether this script still runs or not.
+// The curtain of the style sheet comes down within two seconds of the newest
+// view, whether this script still runs or not.
 function lift() {
   even = !even;
   document.body.classList.toggle("even", even);
@@ -148,7 +148,7 @@ show(person, signedIn());
 
 named();
 draw();
-setInterval(draw, 200);
+setInterval(draw, 100);
 document.addEventListener("visibilitychange", draw);
 addEventListener("pageshow", draw);
 follow(heard, ended);

@@ -219,7 +219,7 @@ export class Sky {
           shapes.push(svg("path", { d: "M0 -5 3.4 4 0 2.4 -3.4 4Z", class: cls, transform: `translate(${x.toFixed(2)} ${y.toFixed(2)}) rotate(${(Math.atan2(x1 - x, y - y1) / rad).toFixed(1)})` }));
         } else shapes.push(svg("path", { d: "M0 -4 4 0 0 4 -4 0Z", class: cls, transform: `translate(${x.toFixed(2)} ${y.toFixed(2)})` }));
         const high = c.altitude_m === null ? "" : ` ${(c.altitude_m / 1000).toFixed(1)} km`;
-        this.#label(d, `${c.aircraft}${high}`, c.inside ? "name strong" : "name", 6, c.inside ? 2 : 1);
+        this.#label(d, `${c.aircraft}${high}`, c.inside ? "name strong" : "name", 7.5, c.inside ? 2 : 1);
         tell(`a${c.aircraft}\0${c.source}`, `Aircraft ${c.aircraft}`, d, `${(c.range_m / 1000).toFixed(1)} km away${high && `, altitude${high}`}${v ? `, course ${deg(c.track_deg)}, ${Math.round(c.speed_mps)} m/s` : ""}, ${age(c.age_s)} old${c.drill ? ", drill" : ""}`);
       }
       for (const a of this.#aims) {
@@ -230,7 +230,7 @@ export class Sky {
         shapes.push(state === "open"
           ? svg("g", { class: "beam-mark", transform: at }, svg("circle", { r: 4.2, class: "hollow" }), svg("path", { d: "M0 -8V8M-8 0H8" }))
           : svg("g", { class: "beam-mark", transform: at }, svg("rect", { x: -4, y: -3, width: 8, height: 6, class: "full" })));
-        this.#label(d, `${a.beam}, ${state}`, "beam-name", 7, 3);
+        this.#label(d, `${a.beam}, ${state}`, "beam-name", 9, 3);
         tell(`b${a.beam}`, `Beam ${a.beam}, ${state}`, d, `${a.motion}${a.target ? `, on ${a.target}` : ""}`);
       }
       if (below > 0) note.push(`${below} aircraft below the horizon are not drawn.`);

@@ -27,6 +27,16 @@ const reasons = {
 
 export const plain = (code) => reasons[code] ?? code;
 
+// within is a plain reason within a sentence.
+export const within = (code) => { const words = plain(code); return words[0].toLowerCase() + words.slice(1); };
+
+// Causes after which a person re-arms, as they follow "after".
+const causes = {
+  "starting": "the start", "interlock": "an unsafe interlock", "detector-alarm": "a detector's alarm", "shutter-fault": "a shutter fault",
+  "watch-missing": "an unstaffed post", "clock": "a clock fault", "record": "a fault of the record", "fault": "a fault inside the service",
+};
+export const after = (codes) => `after ${codes.map((c) => causes[c] ?? within(c)).join(", ")}`;
+
 // What asks for a person's eye stands out; the rest is the calm of the night.
 const loud = new Set(["shutter-fault", "fault", "record", "clock", "interlock", "detector-alarm", "watch-missing"]);
 export const rank = (code) => (loud.has(code) ? "alarm" : code === "rearm" || code === "aircraft" || code === "sighting" ? "notice" : "calm");

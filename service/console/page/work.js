@@ -3,7 +3,7 @@
 import { h, put, rows, byID } from "./dom.js";
 import { ask, key, signIn, Refused } from "./server.js";
 import { open, field, choice, line, said, saying } from "./desk.js";
-import { plain, dated, lasting } from "./words.js";
+import { within, after, dated, lasting } from "./words.js";
 
 const tries = 20;
 
@@ -11,6 +11,8 @@ export class Work {
   constructor(known) { this.known = known; }
 
   #shuttering = false;
+  #since = 0;
+  #held = ""; // the hold that the shutter button placed, while it is told
 
   // shutter places a hold on every beam, and goes on asking until it is
   // answered: the same key each time, so that it is one hold.
@@ -18,6 +20,7 @@ export class Work {
     const done = byID("shutter-done");
     if (this.#shuttering) return;
     this.#shuttering = true;
+    this.#held = "";
     const once = key();
     put(done, "Asking for every beam to be shuttered…");
     done.className = "notice";
@@ -25,6 +28,8 @@ export class Work {
       for (let n = 1; ; n++) {
         try {
           const { doc } = await ask("POST", "/v1/holds", { body: { beam: "*", reason: "shutter all beams, from the console" }, key: once, within: 3000 });
+          this.#held = doc.id;
+          this.#since = this.known.view?.seq ?? 0;
           put(done, `Every beam is held: hold ${doc.id} of ${doc.by} is on record.`);
           done.className = "";
           return;
@@ -98,8 +103,8 @@ export class Work {
     if (now.rearm.length === 0) return said(`Beam ${beam} waits for nobody.`);
     open({
       name: `Re-arm ${beam}`, verb: `Re-arm ${beam}`,
-      says: [`A person is asked after: ${now.rearm.map(plain).join("; ")}. By this you say that you looked at the cause and that it is over.`,
-        `It opens nothing by itself: ${now.reasons.filter((r) => r.code !== "rearm").map((r) => plain(r.code).toLowerCase()).join("; ") || "nothing else forbids the beam at this moment"}.`],
+      says: [`A person is asked ${after(now.rearm)}. By this you say that you looked at the cause and that it is over.`,
+        `It opens nothing by itself: ${now.reasons.filter((r) => r.code !== "rearm").map((r) => within(r.code)).join("; ") || "nothing else forbids the beam at this moment"}.`],
       fields: [field("What you found", line("note", { maxlength: 500 }), "Kept on record; may be left empty.")],
       run: async (form) => {
         await ask("POST", `/v1/beams/${encodeURIComponent(beam)}/rearm`, { body: form.get("note") ? { note: form.get("note") } : {}, match: got.etag });
@@ -194,13 +199,20 @@ export class Work {
   waits() {
     const v = this.known.view;
     return [
-      ...(v?.beams ?? []).filter((b) => b.rearm.length > 0).map((b) => ({ kind: "rearm", id: b.beam, text: `Beam ${b.beam}: re-arm after ${b.rearm.map((c) => plain(c).toLowerCase()).join("; ")}`, verb: `Re-arm ${b.beam}`, go: () => this.rearm(b.beam) })),
+      ...(v?.beams ?? []).filter((b) => b.rearm.length > 0).map((b) => ({ kind: "rearm", id: b.beam, text: `Beam ${b.beam}: re-arm ${after(b.rearm)}`, verb: `Re-arm ${b.beam}`, go: () => this.rearm(b.beam) })),
       ...(v?.lists ?? []).filter((l) => l.needs !== "nothing").map((l) => ({ kind: "list", id: `${l.authority}/${l.id}`, verb: "Look at it", go: () => this.confirm(l.authority, l.id),
         text: `${l.withdrawal_asked_by ? "Withdrawal of list" : "List"} ${l.id} of ${l.authority}: ${l.needs === "second-person" ? "a second person confirms" : "a person confirms"}` })),
     ];
   }
 
-  draw(view) {
+  draw(view, lost) {
+    // What was held is told only as long as it is known to be held still.
+    const ours = (o) => o.id === this.#held;
+    if (this.#held && (lost || (view.seq > this.#since + 50 || view.holds.length > 0) && !view.holds.some(ours))) {
+      this.#held = "";
+      put(byID("shutter-done"), "");
+    }
+    if (lost) return;
     const row = (item) => {
       const text = h("span"), button = h("button", { type: "button" });
       let go = item.go;
