@@ -2,6 +2,7 @@ package api
 
 import (
 	"crypto/sha256"
+	"errors"
 	"net/http"
 	"sync"
 	"time"
@@ -72,12 +73,7 @@ func (c *call) once(asked []byte, lenient bool, do func() (status int, header ht
 	for {
 		old, mine := c.api.answers.find(id, sum)
 		if mine {
-			out, err := run()
-			c.api.answers.settle(id, old, out, err)
-			if err != nil {
-				return err
-			}
-			return c.answer(out)
+			return c.first(id, old, run)
 		}
 		if old.sum != sum {
 			if lenient {
@@ -100,6 +96,20 @@ func (c *call) once(asked []byte, lenient bool, do func() (status int, header ht
 		}
 	}
 }
+
+// first does what nobody asked for with this key before. Whatever becomes of
+// it, those who wait for the answer are let go.
+func (c *call) first(id answerKey, one *answered, run func() (*answered, error)) error {
+	out, err := (*answered)(nil), errAbandoned
+	defer func() { c.api.answers.settle(id, one, out, err) }()
+	if out, err = run(); err != nil {
+		return err
+	}
+	return c.answer(out)
+}
+
+// errAbandoned stands for the outcome of what did not come to an end.
+var errAbandoned = errors.New("it did not come to an end")
 
 func (c *call) answer(a *answered) error {
 	for name, values := range a.header {

@@ -95,7 +95,8 @@ type viewDoc struct {
 	Simulated bool         `json:"simulated"`
 	Site      string       `json:"site"`
 	Beams     []beamState  `json:"beams"`
-	Holds     []holdDoc    `json:"holds"`
+	Holds     []holdDoc    `json:"holds" doc:"at most 100"`
+	HoldTotal int          `json:"hold_total"`
 	Lists     []ListHead   `json:"lists" doc:"those in force or waiting, at most 100"`
 	ListTotal int          `json:"list_total"`
 	Sources   []sourceDoc  `json:"sources"`
@@ -109,7 +110,11 @@ type conditionDoc struct {
 	BehindS float64 `json:"behind_s"`
 }
 
-const listsInView = 100
+// The view stays small enough to be sent ten times a second.
+const (
+	listsInView = 100
+	holdsInView = 100
+)
 
 func viewOf(v *View, fresh bool) viewDoc {
 	out := viewDoc{
@@ -120,7 +125,8 @@ func viewOf(v *View, fresh bool) viewDoc {
 	for i := range v.Beams {
 		out.Beams = append(out.Beams, stateOf(v, &v.Beams[i], fresh))
 	}
-	for i := range v.Holds {
+	out.HoldTotal = len(v.Holds)
+	for i := range v.Holds[:min(len(v.Holds), holdsInView)] {
 		out.Holds = append(out.Holds, holdOf(&v.Holds[i], v.At))
 	}
 	for i := range v.Book {

@@ -135,7 +135,8 @@ type View struct {
 	Simulated bool        `json:"simulated"`
 	Site      string      `json:"site"`
 	Beams     []BeamState `json:"beams"`
-	Holds     []Hold      `json:"holds"`
+	Holds     []Hold      `json:"holds"` // at most 100
+	HoldTotal int         `json:"hold_total"`
 	Lists     []ListHead  `json:"lists"`
 	ListTotal int         `json:"list_total"`
 	Sources   []Source    `json:"sources"`
