@@ -48,14 +48,14 @@ func (r *recorder) RoundTrip(q *http.Request) (*http.Response, error) {
 
 // site is a running service and clients of several people.
 type site struct {
-	t      *testing.T
+	t      testing.TB
 	s      *service.Service
 	tokens map[string]string
 	url    string
 }
 
 // started runs the small example site with tokens, on the machine's own clock.
-func started(t *testing.T) *site {
+func started(t testing.TB) *site {
 	t.Helper()
 	dir := t.TempDir()
 	text, err := os.ReadFile("../../testdata/site/beamward.yaml")
