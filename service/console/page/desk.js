@@ -13,7 +13,7 @@ const advice = {
 export function saying(err) {
   if (!(err instanceof Refused)) return "The page failed to do it. Load it again.";
   const p = err.problem;
-  const more = (p.errors ?? []).slice(0, 20).map((e) => [e.line ? `line ${e.line}` : "", e.field ?? e.pointer ?? "", e.detail !== p.detail ? e.detail : "", e.mend].filter(Boolean).join(": "));
+  const more = (p.errors ?? []).slice(0, 20).map((e) => [e.line ? `line ${e.line}` : "", e.field ?? e.pointer ?? "", e.detail !== p.detail ? e.detail : "", e.mend].filter(Boolean).join(": ")).filter(Boolean).map((m) => `${m[0].toUpperCase()}${m.slice(1)}.`);
   return [`${p.title}${p.detail ? `: ${p.detail}` : ""}.`, ...more, advice[err.status] ?? ""].filter(Boolean).join(" ");
 }
 
@@ -42,6 +42,7 @@ export function said(text, bad = false) {
 export function open(deed) {
   const desk = byID("desk");
   if (desk.hidden) left = document.activeElement;
+  said("");
   const problem = h("p", { class: "problem", role: "alert" });
   const does = deed.verb ? h("button", { type: "submit", class: "do" }, deed.verb) : null;
   const form = h("form", { "aria-labelledby": "desk-name", novalidate: true },

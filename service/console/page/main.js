@@ -16,7 +16,7 @@ const beams = new Beams((beam) => work.rearm(beam));
 const sky = new Sky(known);
 
 const root = document.documentElement;
-let trouble = "", wasLost = true, even = false, asked = false;
+let trouble = "", wasLost = true, even = false, asked = false, boot = "";
 
 function draw() {
   const lost = known.lost(), now = known.now(), view = known.view;
@@ -58,6 +58,8 @@ function heard(name, doc, sinceAsked) {
   if (name === "view") {
     if (!known.take(doc, sinceAsked)) return false;
     trouble = "";
+    if (boot && boot !== doc.boot_id) renew();
+    boot = doc.boot_id;
     lift();
     soon();
   } else if (name === "decision" && known.view) {

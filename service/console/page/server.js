@@ -56,18 +56,34 @@ export async function ask(method, path, { body, type, accept, match, key, within
 // key is a new Idempotency-Key: the same request sent again does nothing again.
 export const key = () => Array.from(crypto.getRandomValues(new Uint8Array(16)), (b) => b.toString(16).padStart(2, "0")).join("");
 
+const seen = () => new Promise((go) => {
+  if (!document.hidden) return go();
+  document.addEventListener("visibilitychange", function look() {
+    if (document.hidden) return;
+    document.removeEventListener("visibilitychange", look);
+    go();
+  });
+});
+
 // silent is how long a stream may say nothing before it is given up, in ms.
 const silent = 3000;
 
 // follow reads the stream for ever: heard(name, doc, sinceAsked) for each event,
 // ended(status, problem) whenever it breaks. It begins again after a second.
+//
+// A browser holds few connections to one server, and each stream takes one. A
+// page that nobody sees gives its own back, so that the button on the one that
+// is seen always has a way.
 export async function follow(heard, ended) {
   for (;;) {
+    await seen();
     let status = 0, problem = {};
     const stop = new AbortController();
     let watch = setTimeout(() => stop.abort(), silent);
     const alive = () => { clearTimeout(watch); watch = setTimeout(() => stop.abort(), silent); };
     const asked = performance.now();
+    const away = setInterval(() => { if (!document.hidden) unseen = 0; else if (++unseen > 10) stop.abort(); }, 1000);
+    let unseen = 0;
     try {
       const res = await fetch("/v1/stream", { headers: headers({ Accept: "text/event-stream" }), cache: "no-store", signal: stop.signal });
       status = res.status;
@@ -94,6 +110,7 @@ export async function follow(heard, ended) {
       }
     } catch { /* the connection broke, or was given up; ended tells */ }
     clearTimeout(watch);
+    clearInterval(away);
     stop.abort();
     ended(status, problem);
     await new Promise((again) => setTimeout(again, 1000));
