@@ -27,7 +27,7 @@ func (fieldCrossing) Look(f *Foreseen, q *Question, sh *Sheet) {
 	planned := q.Now.IsZero()
 	var up span.Set
 	if planned && len(f.Rules.Neighbours) > 0 {
-		up = q.risen(sh)
+		up = q.risen(f, sh)
 	}
 	for i := range f.Rules.Neighbours {
 		n := &f.Rules.Neighbours[i]
@@ -122,7 +122,7 @@ func (f *Foreseen) crossPlanned(q *Question, up span.Set, n *NeighbourRules, sh 
 // risen returns when the beam may be above the horizon, or all of the question's
 // span for a beam that may point lower: a beam below the horizon is in nobody's
 // field, and its elevation closes it whatever else does.
-func (q *Question) risen(sh *Sheet) span.Set {
+func (q *Question) risen(f *Foreseen, sh *Sheet) span.Set {
 	if !(q.Beam.Limits.ElevationMin >= 0) {
 		return append(sh.scratch[1][:0], q.Over)
 	}
@@ -130,9 +130,12 @@ func (q *Question) risen(sh *Sheet) span.Set {
 	spare := q.extent().Radians() + setting
 	coarse := *q
 	coarse.Edge = time.Minute
-	sh.scratch[1] = coarse.search(sh.scratch[1], rate, q.Over, func(n *sky.Night, at time.Time) float64 {
+	turn := q.turning(f)
+	sh.scratch[1] = coarse.searchRated(sh.scratch[1], q.Over, q.Aim.reach(q.Over), func(n *sky.Night, at time.Time) (float64, float64) {
 		d := direction(n, at)
-		return -math.Atan2(d.Z, math.Hypot(d.X, d.Y)) - spare - n.Error().Radians()
+		down := -spare - n.Error().Radians()
+		m := down - math.Atan2(d.Z, math.Hypot(d.X, d.Y))
+		return m, turn.rate(m, rate, d, down)
 	})
 	return sh.scratch[1]
 }

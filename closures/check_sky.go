@@ -22,14 +22,21 @@ func (elevationLimit) Look(f *Foreseen, q *Question, sh *Sheet) {
 	hi, hiErr := f.airless(q.Beam.Limits.ElevationMax)
 	direction, rate := q.overhead()
 	turned := q.Aim.Frame != Horizon
-	margin := func(n *sky.Night, at time.Time) float64 {
+	turn := q.turning(f)
+	rated := func(n *sky.Night, at time.Time) (float64, float64) {
 		d := direction(n, at)
 		el := math.Atan2(d.Z, math.Hypot(d.X, d.Y))
-		pad := q.pad(n, turned)
+		pad := q.pad(n, turned) + rate*q.Slack.Seconds()
+		low, high := (lo+loErr).Radians()+pad, (hi-hiErr).Radians()-pad
 		// The builtin min gives NaN when either is, which is unknown.
-		return min(el-(lo+loErr).Radians(), (hi-hiErr).Radians()-el) - pad
+		m := min(el-low, high-el)
+		return m, turn.rate(m, rate, d, low, high)
 	}
-	for _, s := range q.sky(rate, !turned && rate == 0, margin, sh) {
+	margin := func(n *sky.Night, at time.Time) float64 {
+		m, _ := rated(n, at)
+		return m + rate*q.Slack.Seconds()
+	}
+	for _, s := range q.sky(!turned && rate == 0, rated, sh) {
 		sh.add(Finding{Code: CodeElevationLimit, Verdict: Violated, Over: s, Detail: "the elevation limits of the beam"})
 	}
 	least := UnknownMargin()
@@ -49,13 +56,14 @@ func (f *Foreseen) airless(observed s1.Angle) (s1.Angle, s1.Angle) {
 	return f.Air.Airless(observed)
 }
 
-// sky is search over the question's own span; a margin that is fixed is looked
-// at once.
-func (q *Question) sky(rate float64, fixed bool, margin func(n *sky.Night, at time.Time) float64, sh *Sheet) span.Set {
+// sky is searchRated over the question's own span; a margin that is fixed is
+// looked at once.
+func (q *Question) sky(fixed bool, margin func(n *sky.Night, at time.Time) (m, rate float64), sh *Sheet) span.Set {
 	if n := nightAt(q.Nights, q.Over.From); fixed && n != nil {
-		return q.always(margin(n, q.Over.From), q.Over, sh.scratch[0][:0])
+		m, _ := margin(n, q.Over.From)
+		return q.always(m, q.Over, sh.scratch[0][:0])
 	}
-	sh.scratch[0] = q.search(sh.scratch[0], rate, q.Over, margin)
+	sh.scratch[0] = q.searchRated(sh.scratch[0], q.Over, q.Aim.reach(q.Over), margin)
 	return sh.scratch[0]
 }
 
@@ -89,7 +97,8 @@ func (daylight) Look(f *Foreseen, q *Question, sh *Sheet) {
 	}
 	sun := *q
 	sun.Aim = nil // the Sun is there wherever the aim is
-	for _, s := range sun.sky(sky.SunRate, false, margin, sh) {
+	sh.scratch[0] = sun.search(sh.scratch[0], sky.SunRate, q.Over, margin)
+	for _, s := range sh.scratch[0] {
 		sh.add(Finding{Code: CodeDaylight, Verdict: Violated, Over: s, Detail: "the Sun is above the beam's limit"})
 	}
 	least := UnknownMargin()
