@@ -2,7 +2,6 @@ package api
 
 import (
 	"bufio"
-	"encoding/json"
 	"errors"
 	"net/http"
 	"time"
@@ -10,7 +9,6 @@ import (
 	"beamward/closures"
 	"beamward/closures/plan"
 	"beamward/closures/wire"
-	"beamward/geometry/span"
 	"beamward/service/access"
 	"beamward/service/render"
 )
@@ -178,160 +176,4 @@ func targetsRefused(err error) error {
 		r.Errors = append(r.Errors, wire.ProblemEntry{Line: row.Line, Detail: row.Cause, Mend: row.Mend, Text: row.Text})
 	}
 	return r
-}
-
-// planWriter writes a plan as it is made.
-type planWriter struct {
-	c     *call
-	media string
-	out   *bufio.Writer
-	table *render.Table
-	items []render.Item // of a calendar, which is written at its end
-	count int
-}
-
-func (w *planWriter) begin(head *PlanHead) {
-	w.c.w.Header().Set("Content-Type", w.media)
-	w.alive()
-	data, err := json.Marshal(head)
-	if err != nil {
-		panic(err) // it has no values that JSON cannot say
-	}
-	switch w.media {
-	case ndjson:
-		w.out.Write(append(data, '\n'))
-	case csvType:
-		w.out.WriteString("# " + render.Notice + "\n")
-		w.table = render.NewTable(w.out)
-		_ = w.table.Header()
-	case jsonType:
-		w.out.Write(append(data[:len(data)-1], `,"targets":[`...))
-	}
-}
-
-// alive gives the client another while to take what follows.
-func (w *planWriter) alive() { w.c.longer(w.c.api.limits.Stall) }
-
-func (w *planWriter) target(t *plan.Target, p *planned) error {
-	if w.count++; w.count%64 == 0 {
-		w.alive()
-		if err := w.c.r.Context().Err(); err != nil {
-			return err
-		}
-	}
-	if w.media == csvType || w.media == calendar {
-		return w.rows(t.Name, p)
-	}
-	data, err := json.Marshal(targetOf(t.Name, p))
-	if err != nil {
-		return err
-	}
-	if w.media == ndjson {
-		data = append(data, '\n')
-	} else if w.count > 1 {
-		w.out.WriteByte(',')
-	}
-	_, err = w.out.Write(data)
-	return err
-}
-
-func (w *planWriter) rows(name string, p *planned) error {
-	items := make([]render.Item, 0, len(p.Spans)+len(p.Blocked))
-	if p.err == nil {
-		for _, s := range p.Spans {
-			items = append(items, render.Item{Beam: w.c.query.Get("beam"), Target: name, Open: true, Span: s})
-		}
-		for i := range p.Blocked {
-			it := itemOf(closures.BeamID(w.c.query.Get("beam")), &p.Blocked[i])
-			it.Target = name
-			items = append(items, it)
-		}
-		render.Sort(items)
-	}
-	if w.media == calendar {
-		w.items = append(w.items, items...)
-		return nil
-	}
-	for i := range items {
-		if err := w.table.Row(&items[i]); err != nil {
-			return err
-		}
-	}
-	return nil
-}
-
-func (w *planWriter) end(n int) error {
-	w.alive()
-	switch w.media {
-	case ndjson:
-		data, err := json.Marshal(struct {
-			Done    bool `json:"done"`
-			Targets int  `json:"targets"`
-		}{true, n})
-		if err != nil {
-			return err
-		}
-		w.out.Write(append(data, '\n'))
-	case csvType:
-		if err := w.table.Flush(); err != nil {
-			return err
-		}
-	case calendar:
-		v, _ := w.c.view()
-		cal := render.Calendar{Name: v.Rules.Site.Name, At: w.c.wall()}
-		if err := cal.Write(w.out, w.items); err != nil {
-			return err
-		}
-	default:
-		w.out.WriteString("]}")
-	}
-	return w.out.Flush()
-}
-
-// outlookDoc is what is to come for the present aim.
-type outlookDoc struct {
-	Beam     closures.BeamID `json:"beam"`
-	AimKnown bool            `json:"aim_known" doc:"false: nothing can be said, and nothing is allowed"`
-	Target   string          `json:"target"`
-	From     time.Time       `json:"from"`
-	Until    time.Time       `json:"until"`
-	Allowed  []spanDoc       `json:"allowed"`
-	Closures []closureDoc    `json:"closures"`
-	Cautions []wire.Caution  `json:"cautions"`
-	LeftOut  []string        `json:"left_out" doc:"reasons that cannot be foreseen"`
-}
-
-func (c *call) outlook() error {
-	v, _ := c.view()
-	r, _, err := c.theBeam(v)
-	if err != nil {
-		return err
-	}
-	hours, err := c.number("hours", 0.01, 48, 12)
-	if err != nil {
-		return err
-	}
-	from := c.wall().UTC()
-	over := span.Span{From: from, Until: from.Add(time.Duration(hours * float64(time.Hour)))}
-	k := v.known(r.ID)
-	out := outlookDoc{Beam: r.ID, Target: k.Aim.Target, From: over.From, Until: over.Until, Allowed: []spanDoc{}, Closures: []closureDoc{}, Cautions: []wire.Caution{}, LeftOut: leftOut()}
-	if k.AimUsed == nil {
-		return c.reply(http.StatusOK, out)
-	}
-	give, err := c.slot()
-	if err != nil {
-		return err
-	}
-	defer give()
-	p, err := c.prepare(v, r.ID, over)
-	if err != nil {
-		return err
-	}
-	one := planned{}
-	if one.Allowed, err = p.One(k.AimUsed, &plan.Scratch{}); err != nil {
-		return err
-	}
-	t := targetOf("", &one)
-	out.AimKnown, out.Allowed, out.Closures, out.Cautions = true, t.Allowed, t.Blocked, t.Cautions
-	return c.reply(http.StatusOK, out)
 }
