@@ -125,9 +125,6 @@ func (d *daemon) kill() {
 	_ = d.journal.Close() // it cannot write, which is meant
 }
 
-// close ends in good order.
-func (d *daemon) close() error { return errors.Join(d.stepper.Close(), d.journal.Close()) }
-
 // sights is the engine as the permit issuer sees it.
 type sights struct{ *engine.Engine }
 

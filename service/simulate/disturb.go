@@ -110,7 +110,11 @@ func (n *night) ends() {
 
 // kept counts what people rely on over a kill.
 func (n *night) kept() {
-	n.result.Restored += len(n.judge.told.holds)
+	for _, h := range n.judge.told.holds {
+		if h.until.IsZero() || n.now().Before(h.until) {
+			n.result.Restored++
+		}
+	}
 	for i := range n.judge.told.sightings {
 		if s := &n.judge.told.sightings[i]; n.now().Before(s.Said.Add(s.For)) {
 			n.result.Restored++

@@ -153,9 +153,9 @@ func (j *judge) causes(beam closures.BeamID, at time.Time) []cause {
 
 	aim := j.world.trueAim(beam, at)
 	up := j.world.overhead(aim, at)
-	j.told.people(beam, at, aim, up, &p, live, foreseen)
+	j.told.people(beam, at, up, &p, live, foreseen)
 	j.told.sources(beam, at, live)
-	j.told.listed(beam, at, aim, up, &p, j.world, live, foreseen)
+	j.told.listed(beam, at, aim, up, &p, live, foreseen)
 	if el := seenElevation(up); !(el-p.asterism/degree >= p.lowest && el+p.asterism/degree <= p.highest) {
 		add("elevation", time.Time{}, time.Time{})
 	}

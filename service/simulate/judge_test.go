@@ -1,7 +1,6 @@
 package simulate
 
 import (
-	"fmt"
 	"strings"
 	"testing"
 	"time"
@@ -25,7 +24,8 @@ func TestTheJudgeFindsWhatIsBroken(t *testing.T) {
 		t.Run(c.name, func(t *testing.T) {
 			t.Parallel()
 			const most = 12
-			for seed := range uint64(most) {
+			for i := range uint64(most) {
+				seed := (i + 7) % most // a good one comes first
 				r := played(t, Options{Seed: seed + 1, Length: 15 * time.Minute, Dir: folder(t), Broken: c.broken})
 				for i := range r.Unsafe {
 					if strings.Contains(r.Unsafe[i].What, c.what) {
@@ -34,7 +34,7 @@ func TestTheJudgeFindsWhatIsBroken(t *testing.T) {
 					}
 				}
 			}
-			t.Error(fmt.Sprintf("in %d nights the judge found nothing", most))
+			t.Errorf("in %d nights the judge found nothing", most)
 		})
 	}
 }

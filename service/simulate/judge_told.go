@@ -123,7 +123,7 @@ func (t *told) sources(beam closures.BeamID, at time.Time, live func(string, tim
 }
 
 // people finds what persons said: holds and sightings.
-func (t *told) people(beam closures.BeamID, at time.Time, _, up r3.Vector, p *beamPaper, live func(string, time.Time), foreseen func(string, time.Time, time.Time)) {
+func (t *told) people(beam closures.BeamID, at time.Time, up r3.Vector, p *beamPaper, live func(string, time.Time), foreseen func(string, time.Time, time.Time)) {
 	for id, h := range t.holds {
 		if h.beam != beam && h.beam != closures.EveryBeam || at.Before(h.from) || !h.until.IsZero() && !at.Before(h.until) {
 			continue
@@ -151,7 +151,7 @@ func (t *told) neighbourKnown(pointing int) time.Time {
 }
 
 // listed finds what the authorities' lists close, and time that nobody covers.
-func (t *told) listed(beam closures.BeamID, at time.Time, aim, up r3.Vector, p *beamPaper, w world, live func(string, time.Time), foreseen func(string, time.Time, time.Time)) {
+func (t *told) listed(beam closures.BeamID, at time.Time, aim, up r3.Vector, p *beamPaper, live func(string, time.Time), foreseen func(string, time.Time, time.Time)) {
 	covered := false
 	for _, l := range t.lists {
 		if l.gone {

@@ -112,7 +112,11 @@ func prepare(o Options) (*night, error) {
 		rearms: map[closures.BeamID]time.Time{},
 	}
 	n.start = time.Date(2031, 2, 15, 1, 0, 0, 0, time.UTC)
-	if n.rng.IntN(4) == 0 { // a night's end: the Sun comes
+	dawn := n.rng.IntN(4) == 0
+	switch {
+	case o.Length > 2*time.Hour: // a whole night
+		n.start = time.Date(2031, 2, 14, 20, 30, 0, 0, time.UTC)
+	case dawn: // a night's end: the Sun comes
 		for sunElevation(n.start.Add(o.Length-2*time.Minute)) < sunBelowDeg {
 			n.start = n.start.Add(time.Minute)
 		}

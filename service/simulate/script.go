@@ -90,7 +90,8 @@ func (n *night) write() error {
 				el = n.uniform(31, 34) // it may set while the night lasts
 			}
 			d := geometry.FromHorizon(s1.Angle(n.uniform(0, 360))*s1.Degree, s1.Angle(el)*s1.Degree)
-			n.targets[fmt.Sprintf("%s-%d", b.ID, j)] = n.sky(n.start).ICRS(d, n.start)
+			stands := n.start.Add(n.opt.Length * time.Duration(j) / 4) // one after the other, as a night is planned
+			n.targets[fmt.Sprintf("%s-%d", b.ID, j)] = n.sky(stands).ICRS(d, stands)
 		}
 		n.scopes = append(n.scopes, &scope{name: string(b.ID), to: n.targets[string(b.ID)+"-0"], target: string(b.ID) + "-0", off: wrongBy(n.rng, 33*arcsec*n.rng.Float64())})
 		behind := [...]time.Duration{clockWrong, 0, -clockWrong}[n.rng.IntN(3)]
