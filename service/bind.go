@@ -9,12 +9,14 @@ import (
 	"log"
 	"net"
 	"net/http"
+	"strings"
 	"time"
 
 	"beamward/closures"
 	"beamward/closures/listfile"
 	"beamward/service/access"
 	"beamward/service/api"
+	"beamward/service/console"
 	"beamward/service/engine"
 	"beamward/service/permit"
 )
@@ -111,9 +113,22 @@ func (s *Service) bindAPI(guard *access.Guard, issuer *permit.Issuer, secure *tl
 	if secure != nil {
 		l = tls.NewListener(l, secure)
 	}
-	s.parts.run("api", func(ctx context.Context) error { return serveAPI(ctx, l, a) })
+	s.parts.run("api", func(ctx context.Context) error { return serveAPI(ctx, l, withConsole(a, guard.Public(console.Handler()))) })
 	s.parts.run("api stream", a.Run)
 	return nil
+}
+
+// withConsole answers for the page and its files beside the API. The page asks
+// nobody who they are: it holds no secret, and what it shows comes from the
+// API, which asks.
+func withConsole(api, page http.Handler) http.Handler {
+	return http.HandlerFunc(func(w http.ResponseWriter, r *http.Request) {
+		if r.URL.Path == "/" || strings.HasPrefix(r.URL.Path, "/console/") {
+			page.ServeHTTP(w, r)
+			return
+		}
+		api.ServeHTTP(w, r)
+	})
 }
 
 // Bounds of the API's listener. Bodies and answers have their own times, which
