@@ -85,7 +85,7 @@ func (c *comparer) hung(e *journal.Entry, recorded, mine *closures.Decision) boo
 	if len(c.report.Calls) < mostCalls {
 		call := CloseCall{Seq: e.Seq, At: e.At, Beam: mine.Beam, Recorded: stateOf(recorded), Replayed: stateOf(mine)}
 		if why != nil {
-			call.Code, call.Margin = why.Code.String(), why.Margin
+			call.Code, call.Margin = why.Code.String(), margin(why.Margin)
 		}
 		c.report.Calls = append(c.report.Calls, call)
 	}

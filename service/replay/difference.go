@@ -14,14 +14,14 @@ import (
 
 // Difference is a place where the replay and the record say two things.
 type Difference struct {
-	Seq      uint64          // of the entry that shows it
-	At       time.Time       // of that entry
-	Step     uint64          // number of the step's tick; 0: before the first of the run
-	Beam     closures.BeamID // of a decision; empty: of no single one
-	What     string          // fixed text
-	Field    string          // the first place where they differ, such as reasons[0].margin; empty: it is no single one
-	Recorded string          // as the record writes it
-	Replayed string
+	Seq      uint64          `json:"seq"`             // of the entry that shows it
+	At       time.Time       `json:"at"`              // of that entry
+	Step     uint64          `json:"step"`            // number of the step's tick; 0: before the first of the run
+	Beam     closures.BeamID `json:"beam,omitempty"`  // of a decision; empty: of no single one
+	What     string          `json:"what"`            // fixed text
+	Field    string          `json:"field,omitempty"` // the first place where they differ, such as reasons[0].margin; empty: it is no single one
+	Recorded string          `json:"recorded"`        // as the record writes it
+	Replayed string          `json:"replayed"`
 }
 
 // String says where and what on one line.

@@ -57,7 +57,7 @@ func one(t testing.TB, rep replay.Report) *replay.Difference {
 // Whatever is changed on record is found at its place.
 func TestEachChangeIsFound(t *testing.T) {
 	record, opt := quiet(t)
-	if rep := replayed(t, record, opt); !rep.Identical() || rep.Granted < 2 || rep.Tallies == 0 || !rep.WholeLastRun {
+	if rep := replayed(t, record, opt); !rep.Identical() || rep.Granted < 2 || rep.Tallies == 0 || !rep.Ended {
 		t.Fatalf("the record as it is: %+v", rep)
 	}
 	end := record[len(record)-1].Seq

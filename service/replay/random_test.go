@@ -1,6 +1,8 @@
 package replay_test
 
 import (
+	"maps"
+	"slices"
 	"time"
 
 	"github.com/golang/geo/r3"
@@ -50,7 +52,7 @@ func (w *world) wander(d time.Duration, often int) {
 		case stalled > w.clock.Boot():
 		case w.rng.IntN(200) == 0:
 			stalled = w.clock.Boot() + time.Duration(w.rng.IntN(6000))*time.Millisecond
-		case w.rng.IntN(2) == 0:
+		case w.rng.IntN(5) == 0:
 			w.flush()
 		}
 	}
@@ -74,7 +76,7 @@ func (w *world) calm(d time.Duration) {
 	}
 	w.lists = nil
 	w.opened()
-	for id := range w.tracks {
+	for _, id := range slices.Sorted(maps.Keys(w.tracks)) {
 		delete(w.tracks, id)
 		submit(closures.TrackReleased{Aircraft: id, By: "ana", Spotter: "spotter-east"})
 	}
@@ -84,8 +86,11 @@ func (w *world) calm(d time.Duration) {
 		}
 		w.steady(nil)
 		w.turn(100 * time.Millisecond)
-		w.flush()
+		if t%(400*time.Millisecond) == 0 { // each flush waits for the disk
+			w.flush()
+		}
 	}
+	w.flush()
 }
 
 // opened brings lists under which the whole sky is open.
@@ -164,8 +169,11 @@ func (w *world) happen() {
 		w.offer(closures.WeatherSeen{Source: "mast", Said: at, PressureHPa: 755 + 10*w.rng.Float64(), Temperature: 5 * w.rng.Float64()})
 	case 12, 13, 14:
 		id := [...]string{"a1b2c3", "a1b2c4", "a1b2c5", "a1b2c6", "a1b2c7"}[w.rng.IntN(5)]
-		if w.tracks[id] == nil {
-			w.tracks[id] = &flight{from: [...]closures.Source{"rx-1", "rx-2"}[w.rng.IntN(2)], at: r3.Vector{X: (w.rng.Float64() - 0.5) * 60e3, Y: (w.rng.Float64() - 0.5) * 60e3, Z: 3e3 + 8e3*w.rng.Float64()}, v: r3.Vector{X: (w.rng.Float64() - 0.5) * 500, Y: (w.rng.Float64() - 0.5) * 500, Z: 5}}
+		if w.tracks[id] == nil { // towards the site, to pass it near
+			at := r3.Vector{X: (w.rng.Float64() - 0.5) * 40e3, Y: (w.rng.Float64() - 0.5) * 40e3, Z: 3e3 + 8e3*w.rng.Float64()}
+			v := at.Mul(-(100 + 150*w.rng.Float64()) / at.Norm()).Add(r3.Vector{X: 20 * w.rng.Float64(), Y: 20 * w.rng.Float64()})
+			v.Z = 0
+			w.tracks[id] = &flight{from: [...]closures.Source{"rx-1", "rx-2"}[w.rng.IntN(2)], at: at, v: v}
 		}
 	case 15:
 		w.offer(closures.AimSeen{Beam: "north", Said: at, From: "command", Aim: w.aim(near(w.dir0, 0.02*w.rng.Float64()), at)})
@@ -213,7 +221,9 @@ func (w *world) reload() {
 		more = append(more, "height_m: 2450", "height_m: 2451")
 	}
 	c := parsed(w.t, siteText(w.t, more...))
-	w.must(w.j.PutList(c.Rules.Digest.String(), c.Canonical()))
+	if !w.text(c.Rules.Digest, c.Canonical()) {
+		return
+	}
 	_, err := w.s.Submit("console", closures.RulesSet{Rules: c.Rules, By: "ana"})
 	w.tolerate(err)
 	w.cfg = c

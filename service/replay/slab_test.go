@@ -149,15 +149,10 @@ func (s *scribe) step(at time.Time, bodies ...closures.Body) []closures.Decision
 		if any && old.Open == d.Open && old.Codes == d.Codes && old.OpenUntil.Sub(d.OpenUntil).Abs() <= 100*time.Millisecond {
 			continue
 		}
-		s.said[d.Beam] = d
 		if s.alter != nil && !s.alter(&d) {
 			continue
 		}
-		body, err := wire.EncodeDecision(nil, &d)
-		if err != nil {
-			s.t.Fatal(err)
-		}
-		s.put(at, wire.KindDecision, body)
+		s.record(&d)
 	}
 	return out
 }
@@ -190,4 +185,34 @@ func given(rules ...*closures.Rules) replay.Texts {
 		},
 		List: func(closures.Digest) (*closures.List, error) { return nil, errors.New("no such list") },
 	}
+}
+
+// keep records what a restart would rest on.
+func (s *scribe) keep(at time.Time) {
+	s.t.Helper()
+	d, _ := s.state.Durable()
+	body, err := wire.EncodeDurable(nil, &d)
+	if err != nil {
+		s.t.Fatal(err)
+	}
+	s.put(at, journal.KindDurable, body)
+}
+
+// record puts a decision on record.
+func (s *scribe) record(d *closures.Decision) {
+	s.t.Helper()
+	body, err := wire.EncodeDecision(nil, d)
+	if err != nil {
+		s.t.Fatal(err)
+	}
+	s.said[d.Beam] = *d
+	s.put(d.At, wire.KindDecision, body)
+}
+
+// made decides a beam at an instant from what the last step left.
+func (s *scribe) made(id closures.BeamID, at time.Time) closures.Decision {
+	var sheet closures.Sheet
+	var d closures.Decision
+	s.state.Decide(id, at, &sheet, &d)
+	return d
 }
