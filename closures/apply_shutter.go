@@ -15,7 +15,13 @@ func (s *State) applyShutter(f ShutterSeen, at time.Time) *Error {
 	b.shutter, b.shutterHeard = f, at
 	if f.Position == ShutterClosed && !b.open && !b.withdrawn.IsZero() && !b.sawClosed {
 		b.sawClosed = true
-		if took := at.Sub(b.withdrawn) - s.rules.toldWithin(); took > b.rules.ShutterTime && took > b.longestShutter && b.withdrawn.After(s.boot.At) {
+		// By its own word, as far as its clock may be wrong, so that a service that
+		// was held up does not blame the shutter.
+		seen := f.Said.Add(s.rules.Permit.ConsumerClockError)
+		if at.Before(seen) {
+			seen = at
+		}
+		if took := seen.Sub(b.withdrawn) - s.rules.toldWithin(); took > b.rules.ShutterTime && took > b.longestShutter && b.withdrawn.After(s.boot.At) {
 			b.longestShutter = took
 			s.durable++
 		}

@@ -180,15 +180,22 @@ func (watchMissing) Now(c *Scene, sh *Sheet) {
 	sh.finish(CodeWatchMissing, first, Margin{})
 }
 
-// expire drops sightings and tracks that are over; changed reports whether
-// anything durable went. A track that is dropped was outside the detection
-// range, so it was not durable.
-func (s *Scene) expire(at time.Time) (changed bool) {
-	over := func(f Sighted) bool { return !at.Before(f.until()) }
-	if slices.ContainsFunc(s.Sightings, over) {
-		s.Sightings = slices.DeleteFunc(slices.Clone(s.Sightings), over)
-		changed = true
+// expire drops tracks that are over. A track that is dropped was outside the
+// detection range, so it was not durable.
+func (s *Scene) expire(at time.Time) { s.tracks.expire(s, at) }
+
+// forget drops sightings that have long been over, and reports whether there
+// were any.
+func (s *Scene) forget(at time.Time) bool {
+	long := func(f Sighted) bool { return at.Sub(f.until()) > keepPast }
+	if !slices.ContainsFunc(s.Sightings, long) {
+		return false
 	}
-	s.tracks.expire(s, at)
-	return changed
+	s.Sightings = slices.DeleteFunc(slices.Clone(s.Sightings), long)
+	return true
+}
+
+// present returns the sightings that count at an instant.
+func (s *Scene) present(at time.Time) []Sighted {
+	return slices.DeleteFunc(slices.Clone(s.Sightings), func(f Sighted) bool { return !at.Before(f.until()) })
 }

@@ -76,20 +76,26 @@ func (s *State) begin(at time.Time) {
 	s.at = at
 }
 
-// expire drops what is over.
+// expire drops what has long been over. What is over closes nothing, so that
+// keeping it costs little; dropping it at once would lose a person's word for
+// good when the clock ran ahead for a while and came back.
 func (s *State) expire(at time.Time) {
+	s.scene.expire(at)
+	if !s.scene.clockSound(at) {
+		return
+	}
 	if book, ok := s.book.prune(at); ok {
 		s.book = book
 		s.durable++
 		s.foresee()
 	}
-	over := func(h HoldPlaced) bool { return !h.Span().Until.After(at) }
-	if slices.ContainsFunc(s.holds, over) {
-		s.holds = slices.DeleteFunc(slices.Clone(s.holds), over)
+	long := func(h HoldPlaced) bool { return at.Sub(h.Span().Until) > keepPast }
+	if slices.ContainsFunc(s.holds, long) {
+		s.holds = slices.DeleteFunc(slices.Clone(s.holds), long)
 		s.durable++
 		s.foresee()
 	}
-	if s.scene.expire(at) {
+	if s.scene.forget(at) {
 		s.durable++
 	}
 }

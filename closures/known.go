@@ -72,7 +72,7 @@ type AircraftKnown struct {
 func (s *State) Known(at time.Time) *Known {
 	c := &s.scene
 	k := &Known{
-		At: at, Pointings: slices.Clone(c.pointings), Sightings: slices.Clone(c.Sightings), Detectors: slices.Clone(c.Detectors),
+		At: at, Pointings: slices.Clone(c.pointings), Sightings: c.present(at), Detectors: slices.Clone(c.Detectors),
 		Weather: c.weather, Popups: c.tracks.popups,
 	}
 	for i := range s.beams {

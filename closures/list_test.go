@@ -185,3 +185,32 @@ func TestLeadBeforeATrack(t *testing.T) {
 		}
 	}
 }
+
+// A clock that runs ahead for a while and comes back loses no hold and no
+// sighting: what is over closes nothing, but it is not forgotten. BW-012
+func TestAWrongClockLosesNoHold(t *testing.T) {
+	w := newWorld(t, siteRules(), openList(t))
+	w.mustOpen()
+	until := w.at.Add(5 * time.Minute)
+	w.step(100*time.Millisecond, HoldPlaced{ID: "h", Beam: EveryBeam, By: "ana", Placed: w.at, Until: until},
+		Sighted{Source: "spotter", Said: w.at, For: 5 * time.Minute})
+	right := w.at
+	for _, sound := range []bool{false, true} {
+		w.at = right.Add(10 * time.Minute)
+		w.step(100*time.Millisecond, ClockState{Synchronised: sound, MaxError: 0})
+		if len(w.s.Holds()) != 0 {
+			t.Error("a hold that is over is shown")
+		}
+		w.at = right
+		d := w.step(100*time.Millisecond, ClockState{Synchronised: true})
+		if !d.Codes.Has(CodeHold) || !d.Codes.Has(CodeSighting) {
+			t.Errorf("kernel's word %v: after the clock came back: %s", sound, reasons(d))
+		}
+	}
+	w.at = until.Add(keepPast)
+	w.step(time.Second)
+	w.step(time.Second)
+	if d, _ := w.s.Durable(); len(d.Holds) != 0 || len(d.Sightings) != 0 {
+		t.Errorf("kept for ever: %d holds, %d sightings", len(d.Holds), len(d.Sightings))
+	}
+}

@@ -164,6 +164,16 @@ func (clock) Now(c *Scene, sh *Sheet) {
 	sh.finish(CodeClock, first, Margin{Value: (MaxClockError - c.clockError()).Seconds(), Unit: Second})
 }
 
+// clockSound reports whether the clock may be believed at an instant, by what
+// the rules ask.
+func (c *Scene) clockSound(at time.Time) bool {
+	k := &c.clock
+	if k.heard.IsZero() || !(age(at, k.heard, k.heard) <= clockStale) || k.stepped {
+		return false
+	}
+	return c.Rules.Clock.Synchronised == SyncAssumed || k.Synchronised && k.MaxError >= 0 && k.MaxError <= MaxClockError
+}
+
 // clockError bounds by how much the clock may be wrong; closures are widened
 // by it.
 func (c *Scene) clockError() time.Duration {

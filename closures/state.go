@@ -96,8 +96,10 @@ func (s *State) Rules() *Rules { return s.rules }
 // Nights returns the prepared nights, in order of time.
 func (s *State) Nights() []*sky.Night { return slices.Clone(s.nights) }
 
-// Holds returns the holds, in order of identifier.
-func (s *State) Holds() []HoldPlaced { return slices.Clone(s.holds) }
+// Holds returns the holds that are not over, in order of identifier.
+func (s *State) Holds() []HoldPlaced {
+	return slices.DeleteFunc(slices.Clone(s.holds), func(h HoldPlaced) bool { return !h.Span().Until.After(s.at) })
+}
 
 // Refused returns the facts of the last step that had no effect, and why.
 func (s *State) Refused() []Refused { return s.refused }
