@@ -98,9 +98,13 @@ func (s *Service) bindPermit(guard *access.Guard, issuer *permit.Issuer, secure 
 }
 
 func (s *Service) bindAPI(guard *access.Guard, issuer *permit.Issuer, secure *tls.Config) error {
+	layouts, err := s.layouts()
+	if err != nil {
+		return err
+	}
 	a, err := api.New(api.Options{
 		Engine: apiEngine{s}, Clock: s.clock, Guard: guard, Permits: permits{issuer}, Record: entries{s.journal},
-		Metrics: s.metrics(issuer), Version: s.opt.Build, Report: func(err error) { s.log.Error("the api reports", "err", err) },
+		Layouts: layouts, Metrics: s.metrics(issuer), Version: s.opt.Build, Report: func(err error) { s.log.Error("the api reports", "err", err) },
 	})
 	if err != nil {
 		return err
@@ -113,7 +117,9 @@ func (s *Service) bindAPI(guard *access.Guard, issuer *permit.Issuer, secure *tl
 	if secure != nil {
 		l = tls.NewListener(l, secure)
 	}
-	s.parts.run("api", func(ctx context.Context) error { return serveAPI(ctx, l, withConsole(a, guard.Public(console.Handler()))) })
+	s.parts.run("api", func(ctx context.Context) error {
+		return serveAPI(ctx, l, withConsole(a, guard.Public(console.Handler())))
+	})
 	s.parts.run("api stream", a.Run)
 	return nil
 }

@@ -191,18 +191,40 @@ func (s *Service) reader(layout string) (listReader, error) {
 			return l, err
 		}, nil
 	}
-	text, err := os.ReadFile(s.cfg.Layouts[layout])
+	compiled, err := s.layout(layout)
 	if err != nil {
-		return nil, fmt.Errorf("reading layout %s: %w", layout, err)
-	}
-	compiled, err := listfile.CompileLayout(text)
-	if err != nil {
-		return nil, fmt.Errorf("reading layout %s: %w", layout, err)
+		return nil, err
 	}
 	return func(_ string, text io.Reader) (*closures.List, error) {
 		l, _, err := compiled.Load(text, listfile.Limits{})
 		return l, err
 	}, nil
+}
+
+// layout compiles one of the configuration's layouts.
+func (s *Service) layout(name string) (*listfile.Layout, error) {
+	text, err := os.ReadFile(s.cfg.Layouts[name])
+	if err != nil {
+		return nil, fmt.Errorf("reading layout %s: %w", name, err)
+	}
+	compiled, err := listfile.CompileLayout(text)
+	if err != nil {
+		return nil, fmt.Errorf("reading layout %s: %w", name, err)
+	}
+	return compiled, nil
+}
+
+// layouts compiles all of them.
+func (s *Service) layouts() (map[string]*listfile.Layout, error) {
+	out := map[string]*listfile.Layout{}
+	for name := range s.cfg.Layouts {
+		l, err := s.layout(name)
+		if err != nil {
+			return nil, err
+		}
+		out[name] = l
+	}
+	return out, nil
 }
 
 // offerList reads a list of an authority and gives it to the engine. The same
