@@ -35,6 +35,12 @@ export class Known {
   // forget is for a stream that broke: the next one is measured anew.
   forget() { this.#lags = []; }
 
+  // drop takes every claim down at once.
+  drop() {
+    this.forget();
+    this.#came = null;
+  }
+
   // age is how long ago the newest view was true, in ms; Infinity before the first.
   age() {
     if (!this.#came) return Infinity;

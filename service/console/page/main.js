@@ -80,11 +80,13 @@ async function renew() {
 
 function ended(status, problem) {
   known.forget();
-  trouble = status >= 400 ? `${problem.title ?? status}${problem.detail ? `: ${problem.detail}` : ""}.` : "";
+  trouble = status === 401 && !signedIn() ? "Sign in first." : status >= 400 ? `${problem.title ?? status}${problem.detail ? `: ${problem.detail}` : ""}.` : "";
+  if (status === 401 || status === 403) known.drop(); // whoever may not see is shown nothing more
   if (status === 401 && !asked) {
     asked = true;
+    const text = signedIn() ? `${problem.detail ?? problem.title}.` : "";
     signIn("");
-    work.askToken(problem.detail);
+    work.askToken(text);
   }
   draw();
   renew();

@@ -69,7 +69,7 @@ const seen = () => new Promise((go) => {
 const silent = 3000;
 
 // follow reads the stream for ever: heard(name, doc, sinceAsked) for each event,
-// ended(status, problem) whenever it breaks. It begins again after a second.
+// ended(status, problem) whenever it breaks. It begins again by itself.
 //
 // A browser holds few connections to one server, and each stream takes one. A
 // page that nobody sees gives its own back, so that the button on the one that
@@ -113,6 +113,9 @@ export async function follow(heard, ended) {
     clearInterval(away);
     stop.abort();
     ended(status, problem);
-    await new Promise((again) => setTimeout(again, 1000));
+    // One that held for a while is asked for again at once; one that is refused,
+    // less often.
+    const held = status === 200 && performance.now() - asked > 2000;
+    await new Promise((again) => setTimeout(again, held ? 50 : 1000));
   }
 }

@@ -67,7 +67,7 @@ export class Work {
       run: async (form, once) => {
         const body = { beam: form.get("beam"), reason: form.get("reason"), order: form.get("order") };
         for (const name of ["caller", "call_back"]) if (form.get(name)) body[name] = form.get(name);
-        if (form.get("minutes")) body.until = `${new Date(this.known.now() + form.get("minutes") * 60_000).toISOString().slice(0, 19)}Z`;
+        if (form.get("minutes")) body.until = `${new Date((this.known.lost() ? Date.now() : this.known.now()) + form.get("minutes") * 60_000).toISOString().slice(0, 19)}Z`;
         const { doc } = await ask("POST", "/v1/holds", { body, key: once });
         return `${doc.beam === "*" ? "Every beam" : `Beam ${doc.beam}`} is held: ${doc.id}, on record by ${doc.by}.`;
       },
