@@ -5,6 +5,7 @@ import (
 	"context"
 	"slices"
 	"strings"
+	"sync"
 	"testing"
 	"time"
 
@@ -17,24 +18,32 @@ import (
 // quiet is a short record of a site that opens, is held, and opens again.
 func quiet(t testing.TB) (slab, replay.Options) {
 	t.Helper()
-	w := newWorld(t, 7, siteText(t))
-	w.opened()
-	w.calm(4 * time.Second)
-	at := w.clock.Wall()
-	_, err := w.s.Submit("console", closures.HoldPlaced{ID: "h-1", Beam: closures.EveryBeam, Reason: "check of the optics", By: "ana", Placed: at})
-	w.must(err)
-	w.holds = append(w.holds, "h-1")
-	for range 10 {
-		w.steady(nil)
-		w.turn(100 * time.Millisecond)
-	}
-	w.calm(70 * time.Second)
-	w.stop()
-	r, err := journal.OpenReader(w.dir)
-	w.must(err)
-	t.Cleanup(func() { _ = r.Close() })
-	return taken(t, r), options(r)
+	quietOnce.Do(func() {
+		w := newWorld(t, 7, siteText(t))
+		w.opened()
+		w.calm(4 * time.Second)
+		_, err := w.s.Submit("console", closures.HoldPlaced{ID: "h-1", Beam: closures.EveryBeam, Reason: "check of the optics", By: "ana", Placed: w.clock.Wall()})
+		w.must(err)
+		w.holds = append(w.holds, "h-1")
+		for range 10 {
+			w.steady(nil)
+			w.turn(100 * time.Millisecond)
+		}
+		w.calm(70 * time.Second)
+		w.must(w.s.Close())
+		quietRecord = taken(t, w.j.Reader)
+		quietOptions = replay.Options{Texts: given(w.cfg.Rules), Build: thisBuild}
+		quietOptions.Texts.List = func(d closures.Digest) (*closures.List, error) { return w.given[d], nil }
+	})
+	return quietRecord, quietOptions
 }
+
+// It is made once: the store takes its time.
+var (
+	quietOnce    sync.Once
+	quietRecord  slab
+	quietOptions replay.Options
+)
 
 func replayed(t testing.TB, src replay.Source, opt replay.Options) replay.Report {
 	t.Helper()
@@ -165,6 +174,28 @@ func TestCutShort(t *testing.T) {
 	s.step(evening.Add(7*time.Second), hold)
 	if rep := replayed(t, s.entries, opt); rep.Different != 2 || len(rep.Runs) != 2 {
 		t.Errorf("%+v", rep)
+	}
+}
+
+// Entries that change no decision are passed over where their kind is named,
+// and refused where it is not.
+func TestBeside(t *testing.T) {
+	rules := parsed(t, siteText(t)).Rules
+	opt := replay.Options{Texts: given(rules), Build: thisBuild}
+	s := newScribe(t, rules, thisBuild, evening)
+	s.step(evening, closures.Started{})
+	note := s.put(evening, "note", []byte(`{"text":"the Moon rises"}`))
+	s.step(evening.Add(time.Second))
+	if _, err := replay.Replay(context.Background(), s.entries, replay.Range{}, opt); err == nil || !strings.Contains(err.Error(), "no fact has this kind") {
+		t.Errorf("not named: %v", err)
+	}
+	opt.Beside = []string{"note"}
+	if rep := replayed(t, s.entries, opt); !rep.Identical() || rep.Steps != 2 {
+		t.Errorf("%+v", rep)
+	}
+	x, err := replay.Explain(context.Background(), s.entries, note, opt)
+	if err != nil || x.What != "an entry that changes no decision" || string(x.Body) != `{"text":"the Moon rises"}` {
+		t.Errorf("%v, %+v", err, x)
 	}
 }
 

@@ -6,6 +6,7 @@ import (
 	"encoding/json"
 
 	"fmt"
+	"slices"
 
 	"beamward/closures"
 	"beamward/closures/wire"
@@ -41,7 +42,7 @@ func Explain(ctx context.Context, src Source, seq uint64, opt Options) (*Explana
 	if err != nil {
 		return nil, err
 	}
-	x := explainer{player: player{shelf: shelf}, build: opt.Build, src: src, entry: e, newest: newest{}, recorded: map[closures.BeamID]onRecord{}}
+	x := explainer{player: player{shelf: shelf, other: opt.Beside}, build: opt.Build, src: src, entry: e, newest: newest{}, recorded: map[closures.BeamID]onRecord{}}
 	if x.near = opt.Near; x.near == 0 {
 		x.near = nearEnough
 	}
@@ -154,6 +155,11 @@ func (x *explainer) aimAt(out *Explanation) (beam closures.BeamID, told bool, er
 	case KindBegun, KindEnded, KindTallied, journal.KindGap, journal.KindDurable:
 		out.What, err = plain(e)
 		return "", true, err
+	default:
+		if slices.Contains(x.other, e.Kind) {
+			out.What = "an entry that changes no decision"
+			return "", true, nil
+		}
 	}
 	return "", false, nil
 }

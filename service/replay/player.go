@@ -3,6 +3,7 @@ package replay
 import (
 	"fmt"
 	"runtime/debug"
+	"slices"
 
 	"beamward/closures"
 	"beamward/closures/wire"
@@ -23,6 +24,7 @@ const (
 	summed                 // a tally
 	kept                   // what a restart would need, as of here
 	ended                  // the run ended in good order
+	beside                 // it changes no decision
 	lost                   // entries were lost: nothing is known until the next run
 	missing                // entries are not there that should be: likewise
 	failed                 // the core panicked: likewise
@@ -32,6 +34,7 @@ const (
 // sees entries in order.
 type player struct {
 	shelf *shelf
+	other []string // kinds that change no decision
 	run   Run
 	state *closures.State // nil: outside a run
 	begun *Run            // waits for the entry that it starts from
@@ -76,6 +79,9 @@ func (p *player) take(e *journal.Entry) (event, error) {
 		return kept, nil
 	case KindEnded:
 		return ended, nil
+	}
+	if slices.Contains(p.other, e.Kind) {
+		return beside, nil
 	}
 	return p.fact(e)
 }

@@ -14,6 +14,9 @@ type Options struct {
 	// Build is what this program says of its build, as it would record it. Runs
 	// of another are held against the record less strictly: see Report.
 	Build string
+	// Beside are kinds of entries that are no facts and change no decision, such
+	// as people's notes. Any other kind that is not known is refused.
+	Beside []string
 	// Most is how many differences are told, one a run; 0: 100.
 	Most int
 	// Near is how many entries Explain goes back at most for the sake of being
@@ -57,7 +60,7 @@ func Replay(ctx context.Context, src Source, part Range, opt Options) (Report, e
 	if begin == 0 {
 		begin = first
 	}
-	c := comparer{player: player{shelf: shelf}, build: opt.Build, most: opt.Most, report: &rep}
+	c := comparer{player: player{shelf: shelf, other: opt.Beside}, build: opt.Build, most: opt.Most, report: &rep}
 	if c.most <= 0 {
 		c.most = mostDifferences
 	}

@@ -70,6 +70,7 @@ func (w *world) give(l *closures.List, by string) {
 	if !w.text(l.Digest(), text.Bytes()) {
 		return
 	}
+	w.given[l.Digest()] = l
 	_, err := w.s.Submit(closures.Source(by), closures.ListOffered{List: l, By: by})
 	w.tolerate(err)
 }

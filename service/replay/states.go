@@ -60,7 +60,7 @@ func states(ctx context.Context, src Source, part Range, opt Options, yield func
 	if err != nil || begin == 0 {
 		return err
 	}
-	w := walker{player: player{shelf: shelf}, begin: first, yield: yield}
+	w := walker{player: player{shelf: shelf, other: opt.Beside}, begin: first, yield: yield}
 	read := uint64(0)
 	err = src.Read(ctx, journal.Query{From: begin, To: last}, func(e journal.Entry) error {
 		if read++; opt.Progress != nil && read%progressEvery == 0 {

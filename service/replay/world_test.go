@@ -73,6 +73,7 @@ type world struct {
 	starts int
 	n      int // of names
 	lists  []*closures.List
+	given  map[closures.Digest]*closures.List
 	holds  []closures.HoldID
 	dir0   r3.Vector // ICRS, where beams point when all is well
 	tracks map[string]*flight
@@ -86,7 +87,7 @@ type flight struct {
 
 func newWorld(t testing.TB, seed uint64, text []byte) *world {
 	t.Helper()
-	w := &world{t: t, dir: t.TempDir(), rng: rand.New(rand.NewPCG(seed, 1)), clock: clock.NewVirtual(evening), cfg: parsed(t, text), tracks: map[string]*flight{}}
+	w := &world{t: t, dir: t.TempDir(), rng: rand.New(rand.NewPCG(seed, 1)), clock: clock.NewVirtual(evening), cfg: parsed(t, text), tracks: map[string]*flight{}, given: map[closures.Digest]*closures.List{}}
 	if err := os.Chmod(w.dir, 0o700); err != nil {
 		t.Fatal(err)
 	}
