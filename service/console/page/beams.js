@@ -111,10 +111,10 @@ export class Beams {
   // strip says each beam's state once more, where it stays in sight while the
   // page is scrolled.
   #strip(view, now, lost) {
-    rows(byID("strip-beams"), view?.beams ?? [], (b) => b.beam, (first) => {
+    rows(byID("strip-beams"), (view?.beams ?? []).map((b) => ({ b, now, lost })), ({ b }) => b.beam, ({ b: first }) => {
       const shape = svg("svg", { viewBox: "0 0 24 24", class: "shape" }), word = h("b"), count = h("span");
       const el = h("li", null, shape, h("span", null, first.beam), word, count);
-      return { el, update: (b) => {
+      return { el, update: ({ b, now, lost }) => {
         const state = !lost && (b.state === "open" || b.state === "shuttered") ? b.state : "unknown";
         if (el.dataset.state !== state) { el.dataset.state = state; shape.replaceChildren(...shapes[state]()); }
         put(word, words[state]);

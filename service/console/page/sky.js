@@ -56,7 +56,7 @@ const regionsDrawn = 300, listsRead = 20, windowsRead = 20_000;
 
 export class Sky {
   #aims = []; #craft = []; #neighbours = []; #regions = []; #sightings = []; #beams = [];
-  #came = -Infinity; #lists = ""; #skipped = 0; #total = 0; #names = [];
+  #came = -Infinity; #lists = ""; #skipped = 0; #total = 0; #names = []; #unnamed = 0;
   mirror = true; // east to the left, as the sky is seen from below
 
   constructor(known) {
@@ -131,6 +131,7 @@ export class Sky {
   }
 
   #setNames() {
+    this.#unnamed = 0;
     const taken = this.#names.map((n) => ({ l: n.x - 3, r: n.x + 3, t: n.y - 3, b: n.y + 3 })), out = [];
     for (const n of [...this.#names].sort((a, b) => b.rank - a.rank)) {
       const high = n.rank > 2 ? 6.6 : 5.6, wide = n.text.length * high * 0.56;
@@ -139,11 +140,13 @@ export class Sky {
       const boxes = spots.map(([dx, dy, far]) => {
         const box = { l: n.x + dx, r: n.x + dx + wide, t: n.y + dy - high * 0.85, b: n.y + dy + high * 0.25 };
         const over = taken.reduce((sum, o) => sum + Math.max(0, Math.min(o.r, box.r) - Math.max(o.l, box.l)) * Math.max(0, Math.min(o.b, box.b) - Math.max(o.t, box.t)), 0);
-        return { box, cost: over + far + (box.l < -114 || box.r > 114 ? 1000 : 0), at: [n.x + dx, n.y + dy] };
+        return { box, over, cost: over + far + (box.l < -114 || box.r > 114 ? 1000 : 0), at: [n.x + dx, n.y + dy] };
       });
       const best = boxes.reduce((a, b) => (b.cost < a.cost ? b : a));
+      // A name that would hide others is left to the table; a beam's never is.
+      if (n.rank < 3 && best.over > 8) { this.#unnamed++; continue; }
       taken.push(best.box);
-      out.push(svg("text", { x: best.at[0].toFixed(1), y: best.at[1].toFixed(1), class: n.cls }, n.text));
+      out.unshift(svg("text", { x: best.at[0].toFixed(1), y: best.at[1].toFixed(1), class: n.cls }, n.text));
     }
     this.#names = [];
     return out;
@@ -238,6 +241,7 @@ export class Sky {
       if (this.#skipped > 0) note.push(`${this.#skipped} lists are too large to draw.`);
     }
     byID("dome").replaceChildren(svg("svg", { viewBox: "-116 -112 232 226", role: "img", "aria-label": `The sky from above, east ${this.mirror ? "left" : "right"}. The same stands in words below.` }, ...shapes, ...this.#setNames()));
+    if (this.#unnamed > 0) note.push(`${this.#unnamed} names are left out for want of room: see the words below.`);
     put(byID("sky-note"), [`East ${this.mirror ? "left, as seen looking up" : "right, as on a map"}. Courses for 30 s.`, ...note].join(" "));
     rows(byID("sky-rows"), table, (t) => t.key, () => {
       const all = [h("th", { scope: "row" }), h("td"), h("td"), h("td")];

@@ -21,9 +21,9 @@ export function drawSources(view, now) {
       texts.forEach((t, i) => put(all[i], t));
     } };
   }, "No source is configured.");
-  rows(byID("list-rows"), view?.lists ?? [], (l) => `${l.authority}\0${l.id}`, () => {
+  rows(byID("list-rows"), (view?.lists ?? []).map((l) => ({ l, now })), ({ l }) => `${l.authority}\0${l.id}`, () => {
     const { el, all } = cells(6);
-    return { el, update: (l) => {
+    return { el, update: ({ l, now }) => {
       el.className = l.needs === "nothing" ? "" : "notice";
       const texts = [`${l.authority} ${l.id}`, l.needs === "nothing" ? l.status.replace("-", " ") : `${l.status.replace("-", " ")}: ${l.needs === "second-person" ? "a second person confirms" : "a person confirms"}`,
         dated(l.covers.until, now), dated(l.issued, now), String(l.window_count), l.by];
