@@ -27,6 +27,6 @@
 // # What it does not do
 //
 // It reads no clock, starts no goroutine and writes nothing. It decides
-// nothing by itself: the decisions are the core's. Memory is bounded by one
-// block of the record, the state and the lists in force.
+// nothing by itself: the decisions are the core's. Memory is bounded by a page of
+// the record's blocks, the state and the lists in force.
 package replay
