@@ -37,7 +37,8 @@ export function show(el, shown) {
 const rowsOf = new WeakMap();
 
 // rows keeps one element for each item by its key, so that focus stays where it
-// is while what is around it changes. make returns {el, update(item)}.
+// is while what is around it changes. make returns {el, update(item)}: what
+// changes reaches a row by update alone. none is said where there is no item.
 export function rows(into, items, keyOf, make, none) {
   let known = rowsOf.get(into);
   if (!known) rowsOf.set(into, known = new Map());
@@ -60,9 +61,7 @@ export function rows(into, items, keyOf, make, none) {
       known.delete(key);
     }
   }
-  let empty = known.empty;
-  if (none && !empty) empty = known.empty = make.none?.(none) ?? h(into.tagName === "TBODY" ? "tr" : "li", { class: "none" }, into.tagName === "TBODY" ? h("td", { colspan: 6 }, none) : none);
-  if (empty) {
-    if (seen.size === 0) into.append(empty); else empty.remove();
-  }
+  if (!none) return;
+  known.empty ??= into.tagName === "TBODY" ? h("tr", { class: "none" }, h("td", { colspan: 6 }, none)) : h("li", { class: "none" }, none);
+  if (seen.size > 0) known.empty.remove(); else if (!known.empty.isConnected) into.append(known.empty);
 }

@@ -23,7 +23,7 @@ function draw() {
   document.body.classList.toggle("lost", lost);
   const age = known.age();
   put(byID("utc"), lost ? "--:--:--" : hms(now));
-  put(byID("link"), !lost ? "Heard" : Number.isFinite(age) ? `NOT KNOWN: no word for ${Math.floor(age / 1000)} s. ${trouble}` : `NOT KNOWN: no word from the server yet. ${trouble}`);
+  put(byID("link"), !lost ? (view.fresh ? "Heard" : "Heard, but what the service decided last is too old to be believed") : Number.isFinite(age) ? `NOT KNOWN: no word for ${Math.floor(age / 1000)} s. ${trouble}` : `NOT KNOWN: no word from the server yet. ${trouble}`);
   if (view) {
     put(byID("site"), view.site);
     show(byID("simulated"), view.simulated);
