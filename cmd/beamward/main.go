@@ -77,7 +77,7 @@ configuration cannot be used.`,
 	})
 	root.AddCommand(
 		demoCommand(out), serveCommand(out), checkCommand(out), permitCommand(out), listCommand(out), holdCommand(out),
-		rearmCommand(out), planCommand(out), recordCommand(out), exposureCommand(out), configCommand(out), tokenCommand(out),
+		rearmCommand(out), planCommand(out), recordCommand(out), replayCommand(out), explainCommand(out), exposureCommand(out), configCommand(out), tokenCommand(out),
 		versionCommand(out),
 	)
 	root.InitDefaultHelpCmd()

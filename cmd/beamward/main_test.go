@@ -116,24 +116,24 @@ func datedFiles(ts *testscript.TestScript, _ bool, args []string) {
 	}
 }
 
-// spoil FILE changes one byte within every compressed block of a record, some of
-// which may lie in pages that are no longer used.
+// spoil FILE changes one byte within each compressed block of a record. A page
+// that the store no longer uses may hold an old block: one change alone could
+// hit that.
 func spoilFile(ts *testscript.TestScript, _ bool, args []string) {
 	path := ts.MkAbs(args[0])
 	data, err := os.ReadFile(path)
 	ts.Check(err)
-	magic := []byte{0x28, 0xb5, 0x2f, 0xfd} // Zstandard's, RFC 8878
-	n := 0
-	for at := bytes.Index(data, magic); at >= 0; n++ {
+	magic := []byte{0x28, 0xb5, 0x2f, 0xfd} // Zstandard's magic number, RFC 8878
+	spoilt := 0
+	for at := bytes.Index(data, magic); at >= 0 && at+24 < len(data); spoilt++ {
 		data[at+24] ^= 1
-		next := bytes.Index(data[at+1:], magic)
+		next := bytes.Index(data[at+24:], magic)
 		if next < 0 {
-			at = next
-		} else {
-			at += 1 + next
+			break
 		}
+		at += 24 + next
 	}
-	if n == 0 {
+	if spoilt == 0 {
 		ts.Fatalf("%s holds no block", path)
 	}
 	ts.Check(os.WriteFile(path, data, 0o600))

@@ -17,8 +17,7 @@ func recordCommand(out *console) *cobra.Command {
 		`Reads the record in the configuration's data_dir, for reading only. A service
 may be running on it meanwhile.`,
 		recordShowCommand(out, &from), recordVerifyCommand(out, &from), recordExportCommand(out, &from))
-	c.PersistentFlags().StringVar(&from.config.path, "config", "", "the site's configuration `file`, whose data_dir is meant")
-	c.PersistentFlags().StringVar(&from.dir, "data-dir", "", "the `folder` of the record itself, instead of --config")
+	from.flags(c)
 	return c
 }
 
@@ -26,6 +25,12 @@ may be running on it meanwhile.`,
 type recordPlace struct {
 	config configFlag
 	dir    string
+}
+
+// flags adds the flags that say so, to a command and those below it.
+func (p *recordPlace) flags(c *cobra.Command) {
+	c.PersistentFlags().StringVar(&p.config.path, "config", "", "the site's configuration `file`, whose data_dir is meant")
+	c.PersistentFlags().StringVar(&p.dir, "data-dir", "", "the `folder` of the record itself, instead of --config")
 }
 
 func (p *recordPlace) open() (*journal.Reader, error) {

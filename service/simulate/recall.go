@@ -1,13 +1,11 @@
 package simulate
 
 import (
-	"bytes"
 	"context"
 
 	"beamward/closures"
-	"beamward/closures/listfile"
 	"beamward/closures/wire"
-	"beamward/service/config"
+	"beamward/service"
 	"beamward/service/engine"
 	"beamward/service/journal"
 	"beamward/service/replay"
@@ -15,27 +13,7 @@ import (
 
 // Texts finds the rules and lists that a night's record names.
 func Texts(ctx context.Context, r *journal.Reader) replay.Texts {
-	return replay.Texts{
-		Rules: func(d closures.Digest) (*closures.Rules, error) {
-			text, err := r.List(ctx, d.String())
-			if err != nil {
-				return nil, err
-			}
-			c, err := config.Parse(text, "/")
-			if err != nil {
-				return nil, err
-			}
-			return c.Rules, nil
-		},
-		List: func(d closures.Digest) (*closures.List, error) {
-			text, err := r.List(ctx, d.String())
-			if err != nil {
-				return nil, err
-			}
-			l, _, err := listfile.Load(bytes.NewReader(text), listfile.JSON, listfile.Limits{})
-			return l, err
-		},
-	}
+	return service.Texts(ctx, r)
 }
 
 // recall reads what must outlive a restart, as the service does: the newest
