@@ -60,3 +60,40 @@ func TestBeyondATableNothingIsKnown(t *testing.T) {
 		}
 	}
 }
+
+// A table whose points are all the same is where they are, and while they are:
+// not in whatever region is asked about. BW-018
+func TestATableThatStandsStill(t *testing.T) {
+	r := busyRules()
+	r.Neighbours = nil
+	night, err := sky.Prepare(r.Site.Position, evening, r.Site.UT1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	here := night.ICRS(geometry.FromHorizon(1, 1), evening)
+	there := night.ICRS(geometry.FromHorizon(2, 1), evening)
+	over := span.Span{From: evening, Until: evening.Add(time.Hour)}
+	known := span.Span{From: evening.Add(10 * time.Minute), Until: evening.Add(50 * time.Minute)}
+	q := Question{Beam: &r.Beams[0], Aim: &Aim{Frame: Table, Points: []AimPoint{{known.From, here}, {known.Until, here}}}, Over: over, Nights: []*sky.Night{night}, Edge: EdgeDecide}
+	f := &Foreseen{Rules: r}
+	for _, c := range []struct {
+		at   Region
+		in   bool
+		name string
+	}{
+		{Region{Shape: ICRSCone, Direction: here, Radius: s1.Degree}, true, "its own cone"},
+		{Region{Shape: ICRSCone, Direction: there, Radius: s1.Degree}, false, "another cone"},
+		{Region{Shape: TrackCone, Points: []AimPoint{{over.From, here}, {over.Until, here}}, Radius: s1.Degree}, true, "its own track"},
+		{Region{Shape: TrackCone, Points: []AimPoint{{over.From, there}, {over.Until, there}}, Radius: s1.Degree}, false, "another track"},
+	} {
+		might, must := q.Within(f, &c.at)
+		if middle := known.From.Add(time.Minute); might.Contains(middle) != c.in || must.Contains(middle) != c.in {
+			t.Errorf("%s: might %v, must %v", c.name, might, must)
+		}
+		for _, at := range []time.Time{over.From, known.From.Add(-1), known.Until.Add(2), over.Until.Add(-1)} {
+			if !might.Contains(at) || must.Contains(at) {
+				t.Errorf("%s, where nothing is known: might %v, must %v", c.name, might, must)
+			}
+		}
+	}
+}

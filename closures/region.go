@@ -71,16 +71,33 @@ func (q *Question) pad(n *sky.Night, turned bool) float64 {
 // compared with ICRS.
 func (q *Question) turnedForSky() bool { return q.Aim.Frame == Horizon || q.Aim.Frame == OfDate }
 
+// searchSky is search for a margin against ICRS, before what the asterism and
+// the errors take of it. An aim that is stated in ICRS needs no night for that,
+// so that what lies before the first one or behind the last is known too.
+func (q *Question) searchSky(dst span.Set, rate float64, over span.Span, margin func(n *sky.Night, at time.Time) float64) span.Set {
+	if q.turnedForSky() {
+		return q.search(dst, rate, over, func(n *sky.Night, at time.Time) float64 { return margin(n, at) - q.pad(n, true) })
+	}
+	dst = dst[:0]
+	there := q.Aim.reach(over)
+	if there.Empty() {
+		return appendSpan(dst, over)
+	}
+	pad := q.extent().Radians() + rate*q.Slack.Seconds()
+	dst = appendSpan(dst, span.Span{From: over.From, Until: there.From})
+	dst = span.AppendBelowRated(dst, func(at time.Time) (float64, float64) { return margin(nil, at) - pad, rate }, there, q.Edge)
+	return appendSpan(dst, span.Span{From: there.Until, Until: over.Until})
+}
+
 func (q *Question) inCone(r *Region, over span.Span, dst span.Set, sign float64) span.Set {
 	direction, rate := q.inSky()
-	if rate == 0 && !q.turnedForSky() {
+	if rate == 0 && q.Aim.Frame == ICRS {
 		// A fixed aim keeps its separation: one look serves the span.
 		m := sign*(geometry.Separation(q.Aim.Direction, r.Direction)-r.Radius).Radians() - q.extent().Radians()
 		return q.always(m, over, dst)
 	}
-	turned := q.turnedForSky()
-	return q.search(dst, rate, over, func(n *sky.Night, at time.Time) float64 {
-		return sign*(geometry.Separation(direction(n, at), r.Direction)-r.Radius).Radians() - q.pad(n, turned)
+	return q.searchSky(dst, rate, over, func(n *sky.Night, at time.Time) float64 {
+		return sign * (geometry.Separation(direction(n, at), r.Direction) - r.Radius).Radians()
 	})
 }
 
@@ -105,19 +122,18 @@ func (q *Question) inTrack(r *Region, over span.Span, dst span.Set, sign float64
 	part := over.Intersect(there)
 	direction, rate := q.inSky()
 	rate += track.ownRate()
-	turned := q.turnedForSky()
 	if sign < 0 && !part.Empty() {
 		dst = appendSpan(dst, span.Span{From: over.From, Until: part.From})
 	}
 	if !part.Empty() {
-		found := q.search(nil, rate, part, func(n *sky.Night, at time.Time) float64 {
+		found := q.searchSky(nil, rate, part, func(n *sky.Night, at time.Time) float64 {
 			on := at
 			if on.Before(first) {
 				on = first
 			} else if on.After(last) {
 				on = last
 			}
-			return sign*(geometry.Separation(direction(n, at), track.own(on))-r.Radius).Radians() - q.pad(n, turned)
+			return sign * (geometry.Separation(direction(n, at), track.own(on)) - r.Radius).Radians()
 		})
 		for _, s := range found {
 			dst = appendSpan(dst, s)

@@ -159,8 +159,12 @@ func randomAim(rng *rand.Rand, nights []*sky.Night, over span.Span, middle time.
 			first = middle.Add(-time.Duration(rng.IntN(7200)) * time.Second)
 			last = middle.Add(time.Hour + time.Duration(rng.IntN(7200))*time.Second)
 		}
+		step := 0.2 * s1.Degree
+		if rng.IntN(3) == 0 {
+			step = 0 // a table of a star
+		}
 		for at := first; at.Before(last); at = at.Add(40 * time.Minute) {
-			v = near(rng, v, 0.2*s1.Degree)
+			v = near(rng, v, step)
 			a.Points = append(a.Points, closures.AimPoint{At: at, Direction: v})
 		}
 	case 3:
