@@ -5,6 +5,7 @@ import (
 	"math"
 	"slices"
 	"strings"
+	"sync"
 	"testing"
 	"time"
 
@@ -317,4 +318,28 @@ func TestReconcile(t *testing.T) {
 	if _, err := plan.Reconcile(c.foreseen, "north", l, targets, span.Span{From: dusk.Add(30 * time.Hour), Until: dusk.Add(31 * time.Hour)}, c.nights); err == nil {
 		t.Error("a span that the list does not cover")
 	}
+}
+
+// One planner serves many at once, and each the same.
+func TestPlannerIsShared(t *testing.T) {
+	task := makeTask(t, sizes{60, 20, 2})
+	var want []plan.Allowed
+	for _, a := range task.aims {
+		want = append(want, one(t, task.planner, a))
+	}
+	var wg sync.WaitGroup
+	for range 4 {
+		wg.Add(1)
+		go func() {
+			defer wg.Done()
+			var scratch plan.Scratch
+			for i, a := range task.aims {
+				got, err := task.planner.One(a, &scratch)
+				if err != nil || !got.Spans.Equal(want[i].Spans) || !slices.Equal(got.Blocked, want[i].Blocked) || !slices.Equal(got.Cautions, want[i].Cautions) {
+					t.Errorf("target %d differs: %v", i, err)
+				}
+			}
+		}()
+	}
+	wg.Wait()
 }
