@@ -136,7 +136,7 @@ func (s *State) look(b *beam, at time.Time, sh *Sheet) {
 	// What ended no longer ago than the clock may be wrong still closes.
 	over := span.Span{From: at.Add(-s.scene.clockError()), Until: at.Add(Foresight)}
 	if a := b.present(); a != nil {
-		q := Question{Beam: b.rules, Aim: a.aim, Over: over, Nights: s.nightsFor(over), Edge: EdgeDecide, Now: at, AimBegan: a.began}
+		q := Question{Beam: b.rules, Aim: a.aim, Over: over, Nights: s.nightsAbout(over), Edge: EdgeDecide, Now: at, AimBegan: a.began}
 		if b.hits.serves(b.rules, a.aim, b.hits0) {
 			q.Hits = b.hits
 		}
@@ -155,7 +155,7 @@ func (s *State) look(b *beam, at time.Time, sh *Sheet) {
 // reason of its own.
 func (s *State) lookAimless(b *beam, over span.Span, at time.Time, sh *Sheet) {
 	nowhere := Aim{}
-	q := Question{Beam: b.rules, Aim: &nowhere, Over: over, Nights: s.nightsFor(over), Edge: EdgeDecide, Now: at}
+	q := Question{Beam: b.rules, Aim: &nowhere, Over: over, Nights: s.nightsAbout(over), Edge: EdgeDecide, Now: at}
 	for _, check := range foreseeable() {
 		switch check.(type) {
 		case notCovered, daylight, held:

@@ -214,3 +214,33 @@ func TestAWrongClockLosesNoHold(t *testing.T) {
 		t.Errorf("kept for ever: %d holds, %d sightings", len(d.Holds), len(d.Sightings))
 	}
 }
+
+// At the turn of a 12 h bin of the sky an aim fixed to the ground stays open by
+// a list that opens only its region: tails reach back into the bin before.
+func TestNoGapWhereTheSkysBinsMeet(t *testing.T) {
+	r := siteRules()
+	r.Beams[0].Limits.SunBelow = 90 * s1.Degree
+	turn := time.Date(2031, 2, 14, 12, 0, 0, 0, time.UTC)
+	start := turn.Add(-20 * time.Second)
+	l, err := Index(&ListText{
+		ID: "l", Authority: "orbital-desk", Issued: start, Covers: span.Span{From: start.Add(-time.Hour), Until: start.Add(time.Hour)}, Digest: Digest{1},
+		Regions: []Region{{ID: "r", Shape: ICRSCone, Direction: overheadICRS(t, r, turn, 150, 65), Radius: 5 * s1.Degree, Throughout: ThroughoutOpen}},
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	w := newWorldAt(t, r, start, l)
+	ground := &Aim{Frame: Horizon, Direction: geometry.FromHorizon(150*s1.Degree, 65*s1.Degree), Motion: Fixed}
+	w.quiet = func(b Body) bool { a, is := b.(AimSeen); return is && a.From == "encoder" }
+	opened := false
+	for w.at.Before(turn.Add(20 * time.Second)) {
+		d := w.step(100*time.Millisecond, AimSeen{Beam: "north", Said: w.at, From: "mount", Aim: ground})
+		if opened && !d.Open {
+			t.Fatalf("%v from the turn: %s", w.at.Sub(turn), reasons(d))
+		}
+		opened = opened || d.Open
+	}
+	if !opened {
+		t.Errorf("never open: %s", reasons(w.last[0]))
+	}
+}

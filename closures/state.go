@@ -152,6 +152,12 @@ func (s *State) foresee() {
 // night returns the prepared night that holds at, or nil.
 func (s *State) night(at time.Time) *sky.Night { return nightAt(s.nights, at) }
 
+// nightsAbout returns the nights that a look over a span may need: leads and
+// tails reach beyond it.
+func (s *State) nightsAbout(over span.Span) []*sky.Night {
+	return s.nightsFor(over.Widen(MaxLeadOrTail, MaxLeadOrTail))
+}
+
 // nightsFor returns the nights that touch a span.
 func (s *State) nightsFor(over span.Span) []*sky.Night {
 	for i, n := range s.nights {
