@@ -53,6 +53,8 @@ running service plans on what is in force. A plan names what it left out.`,
 				return usagef("--server and --config: give one of them")
 			case server.asked() && ask.lists != "":
 				return usagef("--lists: a service plans on its own lists: leave it out, or plan offline with --config")
+			case server.asked() && ask.chart != "":
+				return usagef("--chart: a plan is drawn offline: give --config instead of --server")
 			}
 			table, err := openTargets(out, args[0])
 			if err != nil {
@@ -71,6 +73,7 @@ running service plans on what is in force. A plan names what it left out.`,
 	c.Flags().StringVar(&begin, "from", "", "begin, YYYY-MM-DDThh:mm:ssZ; left out: now")
 	c.Flags().StringVar(&end, "until", "", "end; left out: 12 hours later")
 	c.Flags().StringVar(&ask.lists, "lists", "", "a `folder` with more closure lists")
+	c.Flags().StringVar(&ask.chart, "chart", "", "draw the plan into an SVG `file` as well (offline)")
 	choice(c, &ask.format, "format", "table", "how the plan is written", "table", "json", "csv", "ics")
 	return c
 }
@@ -81,6 +84,7 @@ type planAsk struct {
 	over   struct{ From, Until time.Time } // zero: not said
 	lists  string
 	format string
+	chart  string // file to draw into; empty: none
 }
 
 // whole fills in what was not said.

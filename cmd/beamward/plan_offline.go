@@ -59,15 +59,22 @@ func planOffline(ctx context.Context, out *console, from *configFlag, ask *planA
 	}
 	w := planWriterFor(out, ask.format, cfg.Rules.Site.Name)
 	w.begin(&head)
+	drawn := chartOf(cfg, beam.ID, over, nights)
 	shown := out.watch("targets planned")
 	err = eachTarget(ctx, p, targets, func(i int, a *plan.Planned) error {
 		shown.at(i+1, len(targets))
 		t := targetOf(beam.ID, a)
 		w.target(&t)
+		if ask.chart != "" {
+			drawn.Rows = append(drawn.Rows, render.ChartRow{Name: a.Target.Name, Allowed: a.Spans, Blocked: a.Blocked})
+		}
 		return out.broken
 	})
 	shown.end()
-	return errors.Join(err, w.end())
+	if err = errors.Join(err, w.end()); err != nil || ask.chart == "" {
+		return err
+	}
+	return drawChart(ask.chart, &drawn)
 }
 
 // batch is how many targets are planned before their results are written.
