@@ -32,6 +32,7 @@ type tracks struct {
 type trackKey struct {
 	aircraft string
 	source   Source
+	drill    bool // apart from a true aircraft of the same address
 }
 
 // mostReports bounds the reports of one track that contradict each other. With
@@ -114,14 +115,14 @@ func (s *State) applyAircraft(f AircraftSeen, at time.Time) *Error {
 	if f.Aircraft == "" || len(f.Aircraft) > 64 {
 		return Errorf(Invalid, "give the aircraft's address", "aircraft: it has no address")
 	}
-	src.hear(f.Said, at)
-	src.count(at)
-	if src.rules.ReferenceAddress != "" && f.Aircraft == src.rules.ReferenceAddress {
-		src.reference = at
-	}
-	if f.Drill && f.Located && src.rules.Required {
-		// A drill closes as a true one would; it proves nothing of reception.
-		f.OnGround = false
+	// A drill closes as a true aircraft would. It proves nothing: neither that
+	// the source lives nor that it receives.
+	if !f.Drill {
+		src.hear(f.Said, at)
+		src.count(at)
+		if src.rules.ReferenceAddress != "" && f.Aircraft == src.rules.ReferenceAddress {
+			src.reference = at
+		}
 	}
 	s.scene.tracks.take(&f, src.rules, s.rules, at)
 	return nil
@@ -178,7 +179,7 @@ func orElse(v, bound float64) float64 {
 // take takes a report in. It replaces an older one only if it lies inside that
 // one's reach; otherwise both count.
 func (t *tracks) take(f *AircraftSeen, src *SourceRules, r *Rules, at time.Time) {
-	key := trackKey{f.Aircraft, f.Source}
+	key := trackKey{f.Aircraft, f.Source, f.Drill}
 	i, known := t.index[key]
 	if !known {
 		i = len(t.list)

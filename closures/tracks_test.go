@@ -49,3 +49,39 @@ func TestLostTracksOutliveARestart(t *testing.T) {
 		t.Errorf("after a restart the aircraft is forgotten: %s", reasons(d))
 	}
 }
+
+// A drill can only close: it keeps no source alive, proves no reception, and
+// takes no true aircraft's place.
+func TestDrillsOnlyClose(t *testing.T) {
+	r := busyRules()
+	r.Sources[1].MinMessagesPerMin = 1
+	w := newWorld(t, r, openList(t))
+	w.step(0, w.ridge(overheadICRS(t, r, evening, 330, 50)))
+	w.mustOpen()
+	frame := earth.FrameAt(r.Site.Position)
+	drill := AircraftSeen{
+		Source: "rx-1", Aircraft: "4b1803", Located: true, Position: earth.FromECEF(frame.ECEF(w.s.night(w.at).Horizon(w.dir, w.at).Ortho().Mul(80e3))),
+		AltitudeFrom: AboveEllipsoid, Speed: 60, Climb: 0, Error: 50, VerticalError: 50, VelocityError: 3, VerticalVelError: 3, Drill: true,
+	}
+	w.quiet = func(b Body) bool { h, is := b.(Heard); return is && h.Source == "rx-1" }
+	var d Decision
+	for range 150 {
+		drill.Said = w.at
+		d = w.step(100*time.Millisecond, drill)
+	}
+	if d.Open || !d.Codes.Has(CodeSourceSilent) {
+		t.Errorf("drills keep a silent source alive: %s", reasons(d))
+	}
+	w.quiet = nil
+	w.run(8 * time.Second)
+	on := drill
+	on.Drill, on.Said = false, w.at
+	on.Position = earth.FromECEF(frame.ECEF(w.s.night(w.at).Horizon(w.dir, w.at).Mul(9000)))
+	drill.Said = w.at.Add(50 * time.Millisecond)
+	if d = w.step(100*time.Millisecond, on, drill); !d.Codes.Has(CodeAircraft) {
+		t.Errorf("a drill takes a true aircraft's place: %s", reasons(d))
+	}
+	if n := len(w.s.Known(w.at).Aircraft); n != 2 {
+		t.Errorf("%d tracks, want the drill's and the true one's", n)
+	}
+}
