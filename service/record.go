@@ -10,14 +10,7 @@ import (
 	"beamward/closures/wire"
 	"beamward/service/engine"
 	"beamward/service/journal"
-)
-
-// The kinds of the record's entries that neither wire nor the journal names.
-const (
-	kindBegun   = "begun"
-	kindGranted = "granted"
-	kindTallied = "tallied"
-	kindEnded   = "ended"
+	"beamward/service/replay"
 )
 
 // begunEntry starts a state anew.
@@ -58,16 +51,16 @@ func encodeEntry(e *engine.Entry) (journal.Entry, error) {
 		out.Kind = journal.KindDurable
 		out.Body, err = wire.EncodeDurable(nil, &w.Durable)
 	case engine.Begun:
-		out.Kind = kindBegun
+		out.Kind = replay.KindBegun
 		out.Body, err = json.Marshal(begunEntry{w.Boot.ID, wire.FormatTime(w.Boot.At), w.Build, w.Rules.Digest.String(), w.Cause})
 	case engine.Granted:
-		out.Kind = kindGranted
+		out.Kind = replay.KindGranted
 		out.Body, err = json.Marshal(grantedEntry{w.Beam, w.Opening, w.Seq})
 	case engine.Tallied:
-		out.Kind = kindTallied
+		out.Kind = replay.KindTallied
 		out.Body, err = json.Marshal(talliedEntry{w.From, w.To, w.Count, w.Sum.String()})
 	case engine.Ended:
-		out.Kind, out.Body = kindEnded, []byte("{}")
+		out.Kind, out.Body = replay.KindEnded, []byte("{}")
 	default:
 		err = fmt.Errorf("no form for a %T", e.What)
 	}
@@ -145,7 +138,7 @@ func recall(ctx context.Context, j *journal.Journal, rules *closures.Rules, reso
 	err = j.Read(ctx, journal.Query{From: from}, func(e journal.Entry) error {
 		one := engine.Entry{Seq: e.Seq, At: e.At}
 		switch e.Kind {
-		case kindBegun, kindGranted, kindTallied, kindEnded, journal.KindGap, journal.KindDurable, wire.KindRules:
+		case replay.KindBegun, replay.KindGranted, replay.KindTallied, replay.KindEnded, journal.KindGap, journal.KindDurable, wire.KindRules:
 			return nil // a restart rests on none of these
 		case wire.KindDecision:
 			d, err := wire.DecodeDecision(e.Body)
